@@ -1,0 +1,163 @@
+package dist
+
+import "math"
+
+// tinyTail is where inversion turns from tails to their logarithms.
+const tinyTail = 1e-290
+
+// invertible is what invertTail needs of a law.
+type invertible interface {
+	// tailAt returns, at a point x inside the support, the upper tail P(X > x) if
+	// upper is set, else P(X <= x); its logarithm, which may be left 0 where
+	// the tail is at least tinyTail; and the hazard density(x)/tail, which may be 0 or
+	// +Inf where it cannot be told (bisection then takes over).
+	tailAt(x float64, upper bool) (tail, logTail, hazard float64)
+	// support returns the ends of the support: (0, +Inf) or (-Inf, +Inf).
+	support() (lo, hi float64)
+}
+
+// invertTail returns the x where the chosen tail equals p: the inverse of the CDF for
+// upper = false, of the survival function for upper = true. start is a guess
+// (any value; outside the support or NaN means none). p outside [0, 1] gives
+// NaN, p = 0 and 1 the ends of the support. It never fails: the work is bounded by about 130
+// evaluations of tailAt, and takes 3 to 8 of them when the start is fair.
+//
+// The tail with the smaller target is inverted (for p > 1/2 the other one at 1-p,
+// which is exact). Newton's iteration runs on the logarithm of the tail over log x
+// (asinh x on the whole line), where the laws of this package are concave and
+// close to straight far out; a bracket is kept, and a step that leaves it, or
+// two steps that fail to halve it, give way to bisection over the ordered
+// floats, which ends after at most 64 steps whatever the law.
+func invertTail[L invertible](law L, p float64, upper bool, start float64) float64 {
+	lo, hi := law.support()
+	switch {
+	case !(p >= 0 && p <= 1):
+		return math.NaN()
+	case p == 0 && upper || p == 1 && !upper:
+		return hi
+	case p == 0 || p == 1:
+		return lo
+	}
+	if p > 0.5 {
+		p, upper = 1-p, !upper
+	}
+	logp := 0.0
+	if p < tinyTail {
+		logp = logOf(p)
+	}
+	positive := lo == 0
+	a, b := orderOf(lo), orderOf(hi)
+	x := start
+	if !(x > lo && x < hi) {
+		x = 1
+		if !positive {
+			x = 0
+		}
+	}
+	slow := 0
+	best, bestR := x, math.Inf(1)
+	for range 130 {
+		tail, logTail, hazard := law.tailAt(x, upper)
+		var r float64 // log(tail/p)
+		if tail >= tinyTail && p >= tinyTail {
+			if r = tail/p - 1; math.Abs(r) > 0.25 {
+				r = math.Log(tail / p)
+			} else {
+				r = math.Log1p(r)
+			}
+		} else {
+			if tail >= tinyTail {
+				logTail = math.Log(tail)
+			}
+			if logp == 0 {
+				logp = math.Log(p)
+			}
+			r = logTail - logp
+		}
+		if math.Abs(r) < bestR {
+			best, bestR = x, math.Abs(r)
+		}
+		if r == 0 {
+			return x
+		}
+		o := orderOf(x)
+		width := uint64(b - a) // may exceed an int64
+		if (r > 0) == upper { // the root lies to the right
+			a = o
+		} else {
+			b = o
+		}
+		if uint64(b-a) <= 1 {
+			break
+		}
+		// Newton step in u = log x or asinh x.
+		scale := math.Abs(x)
+		if !positive {
+			scale = math.Sqrt(1 + x*x)
+			if scale > 1e150 {
+				scale = math.Abs(x)
+			}
+		}
+		step := r / (hazard * scale)
+		if !upper {
+			step = -step
+		}
+		next := math.NaN()
+		switch {
+		case math.Abs(step) < 1e-9:
+			next = x + step*scale
+		case positive:
+			next = x * math.Exp(step)
+		default:
+			next = x*math.Cosh(step) + scale*math.Sinh(step)
+		}
+		if next == x || math.Abs(step)*scale < 0x1p-54*math.Abs(x) {
+			break
+		}
+		if uint64(b-a) > width/2 {
+			slow++
+		} else {
+			slow = 0
+		}
+		if n := orderOf(next); !(next > lo && next < hi) || n <= a || n >= b || slow > 3 && math.Abs(step) > 1e-6 || slow > 8 {
+			// Both ends may still be those of the support: the middle of the ordered floats then is
+			// near 1 (or 0 on the whole line).
+			next = fromOrder(a + int64(uint64(b-a)/2))
+			slow = 0
+		}
+		x = next
+	}
+	if positive && best <= 5e-324 {
+		// A root below the smallest denormal is 0.
+		if tail, _, _ := law.tailAt(5e-324, upper); !upper && tail > p || upper && tail < p {
+			return 0
+		}
+	}
+	return best
+}
+
+// orderOf maps floats to integers in the same order, adjacent to adjacent.
+func orderOf(x float64) int64 {
+	b := int64(math.Float64bits(x))
+	if b < 0 {
+		return math.MinInt64 - b
+	}
+	return b
+}
+
+// fromOrder is the inverse of orderOf.
+func fromOrder(o int64) float64 {
+	if o < 0 {
+		return math.Float64frombits(uint64(math.MinInt64 - o))
+	}
+	return math.Float64frombits(uint64(o))
+}
+
+// logOf is math.Log made right for denormals, which some implementations take
+// for zero exponents.
+func logOf(x float64) float64 {
+	if x < 0x1p-1022 && x > 0 {
+		return math.Log(x*0x1p200) - 200*math.Ln2
+	}
+	return math.Log(x)
+}
