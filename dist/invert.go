@@ -82,7 +82,7 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		}
 		o := orderOf(x)
 		width := uint64(b - a) // may exceed an int64
-		if (r > 0) == upper { // the root lies to the right
+		if (r > 0) == upper {  // the root lies to the right
 			a = o
 		} else {
 			b = o
