@@ -1,0 +1,89 @@
+package noncentral
+
+import (
+	"math"
+
+	"subsume.example/internal/dd"
+	"subsume.example/internal/special"
+)
+
+// The regions of noncentral χ²(k, λ) at x, with A = λU/2, B = x/(2U) at the
+// saddle point (AB = λx/4, B - A = k/2):
+//
+//	A+B >= 22   contour integral on the circle through the saddle point
+//	else        Poisson mixture in double-double; A, the index of its
+//	            dominating term, is below 11
+//
+// What the circle leaves out (its path from -U to 0) is e^{-2(A+B)} < e^-44 of the
+// integral.
+const chi2Few = 22
+
+// chi2Saddle returns A and B.
+func chi2Saddle(k, lambda, x float64) (a, b float64) {
+	r := math.Hypot(k/2, math.Sqrt(lambda)*math.Sqrt(x))
+	b = (k/2 + r) / 2
+	return math.Sqrt(lambda/b) * math.Sqrt(x/b) * (b / 4), b
+}
+
+func chi2Mixture(k, lambda float64, x dd.DD) mixture {
+	a := dd.From(k / 2)
+	m := mixture{a: k / 2, half: lambda / 2}
+	m.a1 = a.AddF(1)
+	m.y = x.MulF(0.5)
+	if x.Hi < 1e-270 {
+		m.c, _ = special.GammaTailTiny(a, dd.Log(x).Sub(dd.Ln2))
+		m.t0, m.end = m.c, -1
+		return m
+	}
+	m.t0 = special.GammaKernel(a, m.y)
+	m.t0.M = m.t0.M.Div(a)
+	return m
+}
+
+// ChiSquared is noncentral χ² at a point.
+type ChiSquared struct {
+	contour bool
+	right   bool // the saddle point lies right of the pole
+	x       float64
+	path    chi2Path
+	mix     mixture
+}
+
+// AtChiSquared prepares noncentral χ² at x, for finite k > 0, λ >= 0, x > 0.
+func AtChiSquared(k, lambda float64, x dd.DD) (p ChiSquared) {
+	a, b := chi2Saddle(k, lambda, x.Hi)
+	p.x = x.Hi
+	if a+b >= chi2Few {
+		p.contour = true
+		p.path = newChi2Path(k, lambda, x, b)
+		return p
+	}
+	p.right = x.Hi >= 2*b
+	p.mix = chi2Mixture(k, lambda, x)
+	return p
+}
+
+// Tail returns one tail: the upper one if upper is set, and the smaller one or at
+// least one not near 1.
+func (p *ChiSquared) Tail() (t special.Scaled, upper bool) {
+	if p.contour {
+		return p.path.tail()
+	}
+	return p.mix.smaller(p.right)
+}
+
+// Kernel returns the density of log X, x times that of X.
+func (p *ChiSquared) Kernel() special.Scaled {
+	if p.contour {
+		return p.path.kernel(p.x)
+	}
+	return p.mix.kernel()
+}
+
+// Slope returns the derivative of the upper tail in λ, the density for k+2 at x.
+func (p *ChiSquared) Slope() special.Scaled {
+	if p.contour {
+		return p.path.slope()
+	}
+	return p.mix.slope()
+}

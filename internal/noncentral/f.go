@@ -1,0 +1,146 @@
+package noncentral
+
+import (
+	"math"
+
+	"subsume.example/internal/dd"
+	"subsume.example/internal/special"
+)
+
+// The regions of noncentral F(2a, 2b, λ) at x, with ρ and A of the saddle point
+// (see fPath):
+//
+//	A + b log(1+ρ) >= 42   contour integral: circle for b >= 25, a path bent around y for smaller b
+//	else                   Poisson mixture in double-double
+//
+// What the paths leave out near u = 0 is below e^-42 of the integral. Where the
+// mixture is used, A < 42, the index of its dominating term.
+const fFew = 42
+
+// fArg is the argument of a noncentral F tail: c = D1 x/D2 and 1+c, with
+// logarithms that hold where c itself leaves the range of float64.
+type fArg struct {
+	c, c1       dd.DD // c and 1+c; c is scaled by 2^-shift, c1 true
+	shift       int
+	logC, logC1 dd.DD
+}
+
+func newFArg(d1, d2, x float64) fArg {
+	fx, ex := math.Frexp(x)
+	f1, e1 := math.Frexp(d1)
+	f2, e2 := math.Frexp(d2)
+	m := dd.Prod(fx, f1).DivF(f2)
+	e := ex + e1 - e2
+	g := fArg{c: m, shift: e}
+	if e > -900 && e < 900 {
+		g.c, g.shift = m.Scale(e), 0
+	}
+	g.logC = dd.Log(m).Add(dd.Ln2.MulF(float64(e)))
+	switch {
+	case e < -900:
+		g.c1 = dd.From(1)
+	case e > 900:
+		g.c1, g.logC1 = dd.From(math.Inf(1)), g.logC
+	default:
+		g.c1 = g.c.AddF(1)
+		if g.c.Hi < 0x1p-60 {
+			g.logC1 = g.c
+		} else {
+			g.logC1 = dd.Log(g.c1)
+		}
+	}
+	return g
+}
+
+// y returns c/(1+c) as float64 (0 where it underflows).
+func (g *fArg) y() dd.DD {
+	switch {
+	case g.shift == 0:
+		return g.c.Div(g.c1)
+	case g.shift > 0:
+		return dd.From(1)
+	}
+	return dd.DD{Hi: math.Ldexp(g.c.Hi, g.shift)}
+}
+
+// fSaddle returns ρ at the saddle point and A there.
+func fSaddle(a, b, lam2, y float64) (rho, A float64) {
+	// bρ = a + (λy/2)(1 + 1/ρ): bρ² - (a + λy/2)ρ - λy/2 = 0.
+	m := a + lam2*y
+	rho = (m + math.Sqrt(m*m+4*b*lam2*y)) / (2 * b)
+	return rho, lam2 * y * (1 + 1/rho)
+}
+
+func fMixture(a, b, half float64, g *fArg) mixture {
+	da, db := dd.From(a), dd.From(b)
+	m := mixture{a: a, b: b, half: half}
+	m.beta = true
+	m.y, m.p, m.a1 = g.y(), dd.Sum(a, b), dd.Sum(a, 1)
+	switch {
+	case g.shift < 0:
+		m.c, _ = special.BetaTailTiny(da, db, g.logC)
+		m.t0, m.end = m.c, -1
+	case g.shift > 0:
+		m.c, m.t0 = special.BetaTailTiny(db, da, g.logC.Neg())
+		m.t0.M = m.t0.M.Div(da)
+		m.end = 1
+	default:
+		m.y1 = dd.From(1).Div(g.c1)
+		m.t0 = special.BetaKernel(da, db, m.y, m.y1)
+		m.t0.M = m.t0.M.Div(da)
+	}
+	return m
+}
+
+// beyond reports whether the saddle point lies right of the pole.
+func (g *fArg) beyond(rho float64) bool {
+	return g.shift > 0 || g.shift == 0 && rho <= g.c.Hi
+}
+
+// F is noncentral F at a point.
+type F struct {
+	contour bool
+	right   bool
+	path    fPath
+	mix     mixture
+}
+
+// AtF prepares noncentral F at x, for finite d1, d2, x > 0, λ >= 0.
+func AtF(d1, d2, lambda, x float64) (p F) {
+	g := newFArg(d1, d2, x)
+	a, b := d1/2, d2/2
+	rho, A := fSaddle(a, b, lambda/2, g.y().Hi)
+	if A+b*math.Log1p(rho) >= fFew {
+		p.contour = true
+		p.path = newFPath(a, b, lambda/2, &g, rho)
+		return p
+	}
+	p.right = g.beyond(rho)
+	p.mix = fMixture(a, b, lambda/2, &g)
+	return p
+}
+
+// Tail returns one tail: the upper one if upper is set, and the smaller one or at
+// least one not near 1.
+func (p *F) Tail() (t special.Scaled, upper bool) {
+	if p.contour {
+		return p.path.tail()
+	}
+	return p.mix.smaller(p.right)
+}
+
+// Kernel returns the density of log X, x times that of X.
+func (p *F) Kernel() special.Scaled {
+	if p.contour {
+		return p.path.kernel()
+	}
+	return p.mix.kernel()
+}
+
+// Slope returns the derivative of the upper tail in λ.
+func (p *F) Slope() special.Scaled {
+	if p.contour {
+		return p.path.slope()
+	}
+	return p.mix.slope()
+}

@@ -1,0 +1,216 @@
+package noncentral
+
+import (
+	"math"
+
+	"subsume.example/internal/dd"
+	"subsume.example/internal/special"
+)
+
+// The Poisson mixtures of the region with few terms. With w_j the Poisson(λ/2)
+// weights and T_j = P_j - P_{j+1} the drop of the central lower tail when the
+// degrees of freedom rise by 2,
+//
+//	lower = Σ T_j W_j,  W_j = w_0 + ... + w_j
+//	upper = Σ w_j Q_j,  Q_{j+1} = Q_j + T_j
+//
+// (summation by parts of the mixture, as in Benton and Krishnamoorthy 2003,
+// CSDA 43, section 2): every term is positive, no central tail is needed for
+// the lower sum and one for the upper, and all recurrences run upwards
+// multiplying or adding positive numbers. They are carried in double-double.
+//
+// The index of the dominating term is below 45 in the whole region (A in the
+// contour's notation), the terms beyond it fall like those of a Poisson law,
+// so both sums end within maxTerms; the bound is only a belt.
+const (
+	maxTerms = 4000
+	tiny     = 0x1p-62
+)
+
+// drops is the law of the T_j: T_{j+1}/T_j = y (p+j)/(a+1+j), where p is a+b
+// for F and absent (y = x/2) for χ².
+type drops struct {
+	y    dd.DD
+	p    dd.DD
+	a1   dd.DD // a+1
+	beta bool
+}
+
+func (d *drops) ratio(j float64) dd.DD {
+	n := d.y
+	if d.beta {
+		n = n.Mul(d.p.AddF(j))
+	}
+	return n.Div(d.a1.AddF(j))
+}
+
+// lowerSum returns Σ T_j W_j over T_0 w_0. Where y is near 1 the T_j fall slowly:
+// there the sum ends when the weights have died out, Σ_{i>=j} T_i being P_j.
+func (m *mixture) lowerSum() dd.DD {
+	d, half := &m.drops, m.half
+	slow := m.beta && m.y.Hi > 0.5
+	z := 1.0
+	if half > 1 {
+		_, e := math.Frexp(half)
+		z = math.Ldexp(1, e)
+	}
+	// T_j carries z^j, w_j and W_j carry z^-j: neither leaves the range.
+	w, W, T, sum := dd.From(1), dd.From(1), dd.From(1), dd.DD{}
+	for j := range maxTerms {
+		f := float64(j)
+		t := T.Mul(W)
+		if slow && w.Hi < tiny/8*W.Hi && half < (f+1)/2 {
+			// the rest is W Σ T_i
+			return sum.Add(W.MulF(math.Pow(z, f)).Mul(m.lowerRatio(j)))
+		}
+		sum = sum.Add(t)
+		r := d.ratio(f).MulF(z)
+		// the quotient of all later terms is at most q
+		q := r.Hi / z * (1 + w.Hi/W.Hi*half/(f+1))
+		if t.Hi < tiny*sum.Hi*(1-q) {
+			break
+		}
+		w = w.MulF(half / z).DivF(f + 1)
+		W = W.MulF(1 / z).Add(w)
+		T = T.Mul(r)
+	}
+	return sum
+}
+
+// upperSum returns Σ w_j Q_j over w_0 T_0 with q0 = Q_0/T_0.
+func upperSum(d *drops, half float64, q0 dd.DD) dd.DD {
+	w, Q, T, sum := dd.From(1), q0, dd.From(1), dd.DD{}
+	for j := range maxTerms {
+		f := float64(j)
+		sum = sum.Add(w.Mul(Q))
+		w = w.MulF(half).DivF(f + 1)
+		next := Q.Add(T)
+		q := half / (f + 2) * next.Hi / Q.Hi // at least the ratio of all later terms
+		if q < 1 && w.Hi*next.Hi < tiny*sum.Hi*(1-q) {
+			break
+		}
+		Q = next
+		T = T.Mul(d.ratio(f))
+	}
+	return sum
+}
+
+// kernelSum returns Σ w_j T_j (a+j) over w_0 T_0 a: the density of log X over its
+// central value.
+func kernelSum(d *drops, a, half float64) dd.DD {
+	t, sum := dd.From(1), dd.From(1)
+	for j := range maxTerms {
+		f := float64(j)
+		n := d.y
+		if d.beta {
+			n = n.Mul(d.p.AddF(f))
+		}
+		r := n.MulF(half).Div(dd.Sum(a, f).MulF(f + 1))
+		t = t.Mul(r)
+		sum = sum.Add(t)
+		if r.Hi < 0.5 && t.Hi < tiny*sum.Hi {
+			break
+		}
+	}
+	return sum
+}
+
+// dropSum returns Σ w_j T_j over w_0 T_0.
+func dropSum(d *drops, half float64) dd.DD {
+	t, sum := dd.From(1), dd.From(1)
+	for j := range maxTerms {
+		f := float64(j)
+		r := d.ratio(f).MulF(half).DivF(f + 1)
+		t = t.Mul(r)
+		sum = sum.Add(t)
+		if r.Hi < 0.5 && t.Hi < tiny*sum.Hi {
+			break
+		}
+	}
+	return sum
+}
+
+// over returns s/t as a double-double.
+func over(s, t special.Scaled) dd.DD {
+	return special.Scaled{L: s.L.Sub(t.L), M: s.M.Div(t.M)}.DD()
+}
+
+// complementOver returns (1-s)/t.
+func complementOver(s, t special.Scaled) dd.DD {
+	return over(special.Scaled{M: s.DD().Neg().AddF(1)}, t)
+}
+
+// mixture is a Poisson mixture of central laws at a point.
+type mixture struct {
+	drops
+	a, b, half float64
+	y1         dd.DD          // 1-y, for F
+	t0         special.Scaled // T_0
+	end        int            // -1, +1: y is at 0 or 1 to all digits, the central tail that is not 1 is c
+	c          special.Scaled
+}
+
+// upperRatio returns Q_0/T_0.
+func (m *mixture) upperRatio() dd.DD {
+	var c special.Scaled
+	var upper bool
+	switch {
+	case m.end != 0:
+		c, upper = m.c, m.end > 0
+	case m.beta:
+		c, upper = special.BetaTail(dd.From(m.a), dd.From(m.b), m.y, m.y1)
+	default:
+		c, upper = special.GammaTail(dd.From(m.a), m.y)
+	}
+	if upper {
+		return over(c, m.t0)
+	}
+	return complementOver(c, m.t0)
+}
+
+// lowerRatio returns P_j/T_0 (for F).
+func (m *mixture) lowerRatio(j int) dd.DD {
+	if m.end > 0 { // 1 - Q_j, with Q_j = Q_0 + T_0 + ... of the size of Q_0
+		return complementOver(m.c, m.t0)
+	}
+	c, upper := special.BetaTail(dd.Sum(m.a, float64(j)), dd.From(m.b), m.y, m.y1)
+	if upper {
+		return complementOver(c, m.t0)
+	}
+	return over(c, m.t0)
+}
+
+func (m *mixture) tail(upper bool) special.Scaled {
+	var s dd.DD
+	if upper {
+		s = upperSum(&m.drops, m.half, m.upperRatio())
+	} else {
+		s = m.lowerSum()
+	}
+	return m.scaled(s)
+}
+
+// scaled returns s T_0 w_0.
+func (m *mixture) scaled(s dd.DD) special.Scaled {
+	return special.Scaled{L: m.t0.L.AddF(-m.half), M: m.t0.M.Mul(s)}
+}
+
+// kernel returns the density of log X.
+func (m *mixture) kernel() special.Scaled {
+	return m.scaled(kernelSum(&m.drops, m.a, m.half).MulF(m.a))
+}
+
+// slope returns Σ w_j T_j/2, the derivative of the upper tail in λ.
+func (m *mixture) slope() special.Scaled {
+	return m.scaled(dropSum(&m.drops, m.half).MulF(0.5))
+}
+
+// smaller returns the tail asked for, or the other one if that is large.
+func (m *mixture) smaller(upper bool) (special.Scaled, bool) {
+	t := m.tail(upper)
+	if t.L.Hi > -8 && t.Float64() > 0.6 {
+		upper = !upper
+		t = m.tail(upper)
+	}
+	return t, upper
+}
