@@ -55,6 +55,21 @@ func millsPositive(y float64) float64 {
 	return 1 / y
 }
 
+// MillsPair returns the Mills ratios of x and y, both at least 0. It does not
+// check: it is the inner loop of integrals over products of normal intervals.
+func MillsPair(x, y float64) (mx, my float64) {
+	if x < 8 && y < 8 {
+		i, j := int(x*16), int(y*16)
+		c, e := &millsTable[i&(millsCells-1)], &millsTable[j&(millsCells-1)]
+		d, f := x-(float64(i)+0.5)*0.0625, y-(float64(j)+0.5)*0.0625
+		d2, f2 := d*d, f*f
+		mx = (c[0] + c[1]*d) + d2*((c[2]+c[3]*d)+d2*((c[4]+c[5]*d)+d2*(c[6]+c[7]*d)))
+		my = (e[0] + e[1]*f) + f2*((e[2]+e[3]*f)+f2*((e[4]+e[5]*f)+f2*(e[6]+e[7]*f)))
+		return mx, my
+	}
+	return millsPositive(x), millsPositive(y)
+}
+
 // expHalfSquare returns exp(-x²/2) to about 1 ulp.
 func expHalfSquare(x float64) float64 {
 	h := x * x

@@ -35,7 +35,7 @@ func normalRows(t testing.TB) [][]float64 {
 	return rows
 }
 
-func relative(got, want float64) float64 {
+func normalRelErr(got, want float64) float64 {
 	if got == want {
 		return 0
 	}
@@ -57,7 +57,7 @@ func TestNormalTails(t *testing.T) {
 			{"Mills", Mills(x), r[3], 1.5 * ulp},
 			{"NormalLogLower", NormalLogLower(x), math.Log1p(-r[1]), 3 * ulp},
 		} {
-			e := relative(c.got, c.want)
+			e := normalRelErr(c.got, c.want)
 			worst[i] = math.Max(worst[i], e)
 			if e > c.tol {
 				t.Errorf("%s(%v) = %v, want %v, relative error %.2g", c.name, x, c.got, c.want, e)
@@ -69,10 +69,10 @@ func TestNormalTails(t *testing.T) {
 		// The way back: the error of q times q/(x φ(x)), at most a few ulp.
 		if x > 1e-5 {
 			cond := r[3]/x + 2
-			if back := NormalUpperQuantile(r[1]); relative(back, x) > 2*ulp*cond {
+			if back := NormalUpperQuantile(r[1]); normalRelErr(back, x) > 2*ulp*cond {
 				t.Errorf("NormalUpperQuantile(%v) = %v, want %v", r[1], back, x)
 			}
-			if back := NormalLogUpperQuantile(r[2]); relative(back, x) > 2*ulp*cond*math.Max(1, -r[2]) {
+			if back := NormalLogUpperQuantile(r[2]); normalRelErr(back, x) > 2*ulp*cond*math.Max(1, -r[2]) {
 				t.Errorf("NormalLogUpperQuantile(%v) = %v, want %v", r[2], back, x)
 			}
 		}
@@ -109,7 +109,7 @@ func TestNormalLimits(t *testing.T) {
 		{"Between(1, 1+2^-30)", NormalBetween(1, 1+0x1p-30), 2.2535279803580321e-10},
 		{"Between(20, 20.01)", NormalBetween(20, 20.01), 5.0038115018691585e-90},
 	} {
-		if relative(c.got, c.want) > 1e-15 {
+		if normalRelErr(c.got, c.want) > 1e-15 {
 			t.Errorf("%s = %.17g, want %.17g", c.name, c.got, c.want)
 		}
 	}
@@ -127,13 +127,13 @@ func TestNormalLimits(t *testing.T) {
 func TestNormalQuantileRoundTrip(t *testing.T) {
 	for l := -1e-12; l > -1e12; l *= 1.07 {
 		x := NormalLogUpperQuantile(l)
-		if got := NormalLogUpper(x); relative(got, l) > 1e-14 {
+		if got := NormalLogUpper(x); normalRelErr(got, l) > 1e-14 {
 			t.Errorf("log Q(%v) = %v, want %v", x, got, l)
 		}
 	}
 	for q := 1e-300; q < 1; q *= 1.13 {
 		x := NormalUpperQuantile(q)
-		if got := NormalUpper(x); relative(got, q) > 4e-16*math.Max(1, x*x) {
+		if got := NormalUpper(x); normalRelErr(got, q) > 4e-16*math.Max(1, x*x) {
 			t.Errorf("Q(%v) = %v, want %v", x, got, q)
 		}
 	}
