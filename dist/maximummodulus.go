@@ -29,10 +29,11 @@ var _ Law = MaximumModulus{}
 
 const maxModulusGroups = 10000
 
-// Validate reports which parameter is outside its range, nil when none is.
+// Validate returns a *ParamError that names the parameter outside its range, nil
+// when none is.
 func (d MaximumModulus) Validate() error {
 	if d.K < 1 || d.K > maxModulusGroups {
-		return groupError("MaximumModulus", d.K, 1, maxModulusGroups)
+		return &ParamError{"MaximumModulus", "K", float64(d.K), "an integer from 1 to 10000"}
 	}
 	return studentizedNuError("MaximumModulus", d.Nu)
 }
@@ -49,7 +50,7 @@ func (d MaximumModulus) law() studentizedLaw {
 // CDF returns P(M <= x), computed directly where it is the smaller tail: 0 for
 // x <= 0, 1 at +Inf, NaN for NaN.
 func (d MaximumModulus) CDF(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 0, 1); done {
+	if v, done := positiveEnds(x, d.valid(), 0, 1); done {
 		return v
 	}
 	l := d.law()
@@ -59,7 +60,7 @@ func (d MaximumModulus) CDF(x float64) float64 {
 // Survival returns P(M > x), computed directly where it is the smaller tail:
 // 1 for x <= 0, 0 at +Inf, NaN for NaN.
 func (d MaximumModulus) Survival(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 1, 0); done {
+	if v, done := positiveEnds(x, d.valid(), 1, 0); done {
 		return v
 	}
 	l := d.law()
@@ -68,7 +69,7 @@ func (d MaximumModulus) Survival(x float64) float64 {
 
 // LogCDF returns log P(M <= x), finite beyond the underflow of CDF.
 func (d MaximumModulus) LogCDF(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, math.Inf(-1), 0); done {
+	if v, done := positiveEnds(x, d.valid(), math.Inf(-1), 0); done {
 		return v
 	}
 	l := d.law()
@@ -77,7 +78,7 @@ func (d MaximumModulus) LogCDF(x float64) float64 {
 
 // LogSurvival returns log P(M > x), finite beyond the underflow of Survival.
 func (d MaximumModulus) LogSurvival(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 0, math.Inf(-1)); done {
+	if v, done := positiveEnds(x, d.valid(), 0, math.Inf(-1)); done {
 		return v
 	}
 	l := d.law()
@@ -89,7 +90,7 @@ func (d MaximumModulus) Prob(x float64) float64 {
 	if d.valid() && x == 0 && d.K == 1 {
 		return chiMoment(d.Nu, 1) * math.Sqrt(2/math.Pi)
 	}
-	if v, done := edgeTail(d.valid(), x, 0, 0); done {
+	if v, done := positiveEnds(x, d.valid(), 0, 0); done {
 		return v
 	}
 	l := d.law()
@@ -101,7 +102,7 @@ func (d MaximumModulus) LogProb(x float64) float64 {
 	if d.valid() && x == 0 && d.K == 1 {
 		return math.Log(d.Prob(0))
 	}
-	if v, done := edgeTail(d.valid(), x, math.Inf(-1), math.Inf(-1)); done {
+	if v, done := positiveEnds(x, d.valid(), math.Inf(-1), math.Inf(-1)); done {
 		return v
 	}
 	l := d.law()
@@ -156,10 +157,10 @@ func (d MaximumModulus) Rand(src rand.Source) float64 {
 	for range d.K {
 		top = math.Max(top, math.Abs(rng.NormFloat64()))
 	}
-	return top * math.Exp(-logChiVariate(rng, d.Nu))
+	return top * math.Exp(-logChiVariate(src, d.Nu))
 }
 
-// String names the law with its parameters.
+// String returns the law with its parameters, "MaximumModulus(5, 20)".
 func (d MaximumModulus) String() string {
-	return fmt.Sprintf("MaximumModulus(K=%d, Nu=%v)", d.K, d.Nu)
+	return fmt.Sprintf("MaximumModulus(%d, %v)", d.K, d.Nu)
 }

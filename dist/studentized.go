@@ -96,7 +96,7 @@ func (s *studentized) integral(u *unitLaw, q float64, want wanted) tail {
 	l.step, l.allowed = s.step(u, want)
 	l.w0 = q * math.Exp(l.v0)
 	if !(l.w0 > 1e-290 && l.w0 < 1e290) {
-		l.w0 = math.Exp(math.Log(q) + l.v0)
+		l.w0 = math.Exp(logOf(q) + l.v0)
 	}
 	for try := 0; ; try++ {
 		t, ok := s.sum(u, &l, 0, want, nil)
@@ -125,7 +125,7 @@ func logRatio(a, b float64) float64 {
 	} else if r > 1e-290 && r < 1e290 {
 		return math.Log(r)
 	}
-	return math.Log(a) - math.Log(b)
+	return logOf(a) - logOf(b)
 }
 
 // lattice places node j at w = w0 exp(j step), v = v0 + j step.
@@ -148,11 +148,11 @@ func (s *studentized) step(u *unitLaw, want wanted) (h, allowed float64) {
 // mode guesses where the integrand is largest: where s concentrates when the
 // law of W has no say there, else where the two slopes meet.
 func (s *studentized) mode(u *unitLaw, q float64, want wanted) float64 {
-	edge := math.Log(u.middle) - math.Log(q)
+	edge := math.Log(u.middle) - logOf(q)
 	// Beyond the middle of W the integrand goes like nu v - (nu + c q²)/2 e^(2v).
 	hi := 0.0
 	if r := u.quad() * q * q / s.nu; math.IsInf(r, 0) {
-		hi = 0.5*(math.Log(s.nu)-math.Log(u.quad())) - math.Log(q)
+		hi = 0.5*(math.Log(s.nu)-math.Log(u.quad())) - logOf(q)
 	} else {
 		hi = -0.5 * math.Log1p(r)
 	}

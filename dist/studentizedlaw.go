@@ -51,7 +51,7 @@ func (l *studentizedLaw) direct(x float64, want wanted, c *nodes) tail {
 	}
 	shift := 0.0
 	if x < tinyX && want != wantUpper {
-		shift = l.u.power * (math.Log(x) - math.Log(tinyX))
+		shift = l.u.power * (logOf(x) - math.Log(tinyX))
 		x = tinyX
 		c = nil
 	}
@@ -68,7 +68,7 @@ func (l *studentizedLaw) direct(x float64, want wanted, c *nodes) tail {
 // smaller returns the smaller tail, or at least one that is below 0.9.
 func (l *studentizedLaw) smaller(x float64, c *nodes) (t tail, upper bool) {
 	want, other := wantLower, wantUpper
-	if math.Log(x) > l.half {
+	if logOf(x) > l.half {
 		want, other = wantUpper, wantLower
 	}
 	t = l.direct(x, want, c)
@@ -115,11 +115,11 @@ func (l *studentizedLaw) prob(x float64) float64 {
 	if v := t.value(); v > 1e-290 {
 		return v / x
 	}
-	return math.Exp(t.logValue() - math.Log(x))
+	return math.Exp(t.logValue() - logOf(x))
 }
 
 func (l *studentizedLaw) logProb(x float64) float64 {
-	return l.direct(x, wantDensity, nil).logValue() - math.Log(x)
+	return l.direct(x, wantDensity, nil).logValue() - logOf(x)
 }
 
 // solve returns the x at which the tail on the wanted side has the logarithm
@@ -222,14 +222,14 @@ func (l *studentizedLaw) guess(lp float64, want wanted) float64 {
 
 func (l *studentizedLaw) quantile(p float64) float64 {
 	if p <= 0.5 {
-		return l.solve(math.Log(p), wantLower)
+		return l.solve(logOf(p), wantLower)
 	}
 	return l.solve(math.Log1p(-p), wantUpper)
 }
 
 func (l *studentizedLaw) upperQuantile(q float64) float64 {
 	if q <= 0.5 {
-		return l.solve(math.Log(q), wantUpper)
+		return l.solve(logOf(q), wantUpper)
 	}
 	return l.solve(math.Log1p(-q), wantLower)
 }
@@ -296,33 +296,10 @@ func stirlingRest(a float64) float64 {
 }
 
 // logChiVariate draws log s.
-func logChiVariate(rng *rand.Rand, nu float64) float64 {
+func logChiVariate(src rand.Source, nu float64) float64 {
 	if math.IsInf(nu, 1) {
 		return 0
 	}
 	a := 0.5 * nu
-	return 0.5 * (logGammaVariate(rng, a) - math.Log(a))
-}
-
-// logGammaVariate draws log of a gamma variate of shape a by Marsaglia and
-// Tsang (ACM TOMS 26, 2000), for a < 1 with the power of a uniform in logs.
-func logGammaVariate(rng *rand.Rand, a float64) float64 {
-	boost := 0.0
-	if a < 1 {
-		boost = -rng.ExpFloat64() / a
-		a++
-	}
-	d := a - 1.0/3
-	c := 1 / math.Sqrt(9*d)
-	for {
-		x := rng.NormFloat64()
-		v := 1 + c*x
-		if v <= 0 {
-			continue
-		}
-		v = v * v * v
-		if u := rng.ExpFloat64(); -u < 0.5*x*x+d-d*v+d*math.Log(v) {
-			return math.Log(d) + math.Log(v) + boost
-		}
-	}
+	return 0.5 * (logGammaVariate(src, a) - math.Log(a))
 }

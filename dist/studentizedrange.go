@@ -35,23 +35,20 @@ const (
 	maxStudentizedNu = 1e12
 )
 
-// Validate reports which parameter is outside its range, nil when none is.
+// Validate returns a *ParamError that names the parameter outside its range, nil
+// when none is.
 func (d StudentizedRange) Validate() error {
 	if d.K < 2 || d.K > maxRangeGroups {
-		return groupError("StudentizedRange", d.K, 2, maxRangeGroups)
+		return &ParamError{"StudentizedRange", "K", float64(d.K), "an integer from 2 to 1000"}
 	}
 	return studentizedNuError("StudentizedRange", d.Nu)
-}
-
-func groupError(law string, k, low, high int) error {
-	return fmt.Errorf("dist: %s: K = %d, want an integer from %d to %d", law, k, low, high)
 }
 
 func studentizedNuError(law string, nu float64) error {
 	if nu >= minStudentizedNu && nu <= maxStudentizedNu || math.IsInf(nu, 1) {
 		return nil
 	}
-	return fmt.Errorf("dist: %s: Nu = %v, want %g to %g degrees of freedom, or +Inf", law, nu, minStudentizedNu, maxStudentizedNu)
+	return &ParamError{law, "Nu", nu, "degrees of freedom from 1e-3 to 1e12, or +Inf"}
 }
 
 func (d StudentizedRange) valid() bool {
@@ -66,7 +63,7 @@ func (d StudentizedRange) law() studentizedLaw {
 // CDF returns P(Q <= x), computed directly where it is the smaller tail: 0 for
 // x <= 0, 1 at +Inf, NaN for NaN.
 func (d StudentizedRange) CDF(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 0, 1); done {
+	if v, done := positiveEnds(x, d.valid(), 0, 1); done {
 		return v
 	}
 	l := d.law()
@@ -76,7 +73,7 @@ func (d StudentizedRange) CDF(x float64) float64 {
 // Survival returns P(Q > x), computed directly where it is the smaller tail:
 // 1 for x <= 0, 0 at +Inf, NaN for NaN.
 func (d StudentizedRange) Survival(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 1, 0); done {
+	if v, done := positiveEnds(x, d.valid(), 1, 0); done {
 		return v
 	}
 	l := d.law()
@@ -85,7 +82,7 @@ func (d StudentizedRange) Survival(x float64) float64 {
 
 // LogCDF returns log P(Q <= x), finite beyond the underflow of CDF.
 func (d StudentizedRange) LogCDF(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, math.Inf(-1), 0); done {
+	if v, done := positiveEnds(x, d.valid(), math.Inf(-1), 0); done {
 		return v
 	}
 	l := d.law()
@@ -94,7 +91,7 @@ func (d StudentizedRange) LogCDF(x float64) float64 {
 
 // LogSurvival returns log P(Q > x), finite beyond the underflow of Survival.
 func (d StudentizedRange) LogSurvival(x float64) float64 {
-	if v, done := edgeTail(d.valid(), x, 0, math.Inf(-1)); done {
+	if v, done := positiveEnds(x, d.valid(), 0, math.Inf(-1)); done {
 		return v
 	}
 	l := d.law()
@@ -106,7 +103,7 @@ func (d StudentizedRange) Prob(x float64) float64 {
 	if d.valid() && x == 0 && d.K == 2 {
 		return chiMoment(d.Nu, 1) / math.Sqrt(math.Pi)
 	}
-	if v, done := edgeTail(d.valid(), x, 0, 0); done {
+	if v, done := positiveEnds(x, d.valid(), 0, 0); done {
 		return v
 	}
 	l := d.law()
@@ -118,7 +115,7 @@ func (d StudentizedRange) LogProb(x float64) float64 {
 	if d.valid() && x == 0 && d.K == 2 {
 		return math.Log(d.Prob(0))
 	}
-	if v, done := edgeTail(d.valid(), x, math.Inf(-1), math.Inf(-1)); done {
+	if v, done := positiveEnds(x, d.valid(), math.Inf(-1), math.Inf(-1)); done {
 		return v
 	}
 	l := d.law()
@@ -175,26 +172,12 @@ func (d StudentizedRange) Rand(src rand.Source) float64 {
 		z := rng.NormFloat64()
 		lo, hi = math.Min(lo, z), math.Max(hi, z)
 	}
-	return (hi - lo) * math.Exp(-logChiVariate(rng, d.Nu))
+	return (hi - lo) * math.Exp(-logChiVariate(src, d.Nu))
 }
 
-// String names the law with its parameters.
+// String returns the law with its parameters, "StudentizedRange(5, 20)".
 func (d StudentizedRange) String() string {
-	return fmt.Sprintf("StudentizedRange(K=%d, Nu=%v)", d.K, d.Nu)
-}
-
-// edgeTail answers for a positive law what needs no computing: NaN, x <= 0
-// (value low) and x = +Inf (value high).
-func edgeTail(valid bool, x, low, high float64) (v float64, done bool) {
-	switch {
-	case !valid || math.IsNaN(x):
-		return math.NaN(), true
-	case x <= 0:
-		return low, true
-	case math.IsInf(x, 1):
-		return high, true
-	}
-	return 0, false
+	return fmt.Sprintf("StudentizedRange(%d, %v)", d.K, d.Nu)
 }
 
 // edgeQuantile answers NaN outside [0, 1] and the two ends.

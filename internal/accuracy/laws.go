@@ -16,7 +16,12 @@ var Tables = []Table{
 	{File: "betainc", Params: 2, New: func(p []float64) Distribution { return Beta{p[0], p[1]} }, Everyday: func(p []float64) bool {
 		return min(p[0], p[1]) >= 0.25 && max(p[0], p[1]) <= 5e3
 	}},
+	{File: "srange", Params: 2, NoDensity: true, New: func(p []float64) Distribution { return dist.StudentizedRange{K: int(p[0]), Nu: p[1]} }, Everyday: everydayScale},
+	{File: "smm", Params: 2, NoDensity: true, New: func(p []float64) Distribution { return dist.MaximumModulus{K: int(p[0]), Nu: p[1]} }, Everyday: everydayScale},
 }
+
+// everydayScale holds for every row with an estimated or known scale.
+func everydayScale([]float64) bool { return true }
 
 // everydayDF reports whether the first n parameters lie in 0.5 ... 1e4.
 func everydayDF(n int) func(p []float64) bool {
