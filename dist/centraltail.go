@@ -31,7 +31,7 @@ func (t centralTail) log(upper bool) float64 {
 	return t.LogComplement()
 }
 
-// eval returns the tail, its logarithm (only where the tail is below 1e-290) and the
+// eval returns the tail, its logarithm (only where the tail is below tinyTail) and the
 // hazard density/tail, as invertible wants it.
 func (t centralTail) eval(upper bool, density special.Scaled) (tail, logTail, hazard float64) {
 	tail = t.value(upper)

@@ -32,6 +32,9 @@ func chiTail(k float64, x dd.DD, near float64) centralTail {
 		t, _ := special.GammaTailTiny(half(k), chiLogHalf(k, x, near))
 		return centralTail{t, false}
 	}
+	if math.IsInf(x.Hi, 1) {
+		return centralTail{special.Scaled{}, true}
+	}
 	t, upper := special.GammaTail(half(k), x.MulF(0.5))
 	return centralTail{t, upper}
 }

@@ -33,8 +33,8 @@ func (f F) valid() bool { return finitePositive(f.D1) && f.D2 > 0 }
 
 // scaleChi returns the chi-squared variable that has the law of D1 F for D2 = +Inf.
 func (f F) scaleChi(x float64) dd.DD {
-	if x > 1e290 {
-		return dd.From(math.Inf(1))
+	if p := f.D1 * x; p > math.MaxFloat64 {
+		return dd.From(p)
 	}
 	return dd.Prod(f.D1, x)
 }

@@ -2,8 +2,8 @@ package dist
 
 import "math"
 
-// tinyTail is where inversion turns from tails to their logarithms.
-const tinyTail = 1e-290
+// tinyTail, the smallest normal number, is where inversion turns from tails to their logarithms.
+const tinyTail = 0x1p-1022
 
 // invertible is what invertTail needs of a law.
 type invertible interface {

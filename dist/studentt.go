@@ -168,7 +168,9 @@ func (s StudentT) Quantile(p float64) float64 {
 // says little about t; there P(T² <= t²) = 1 - 2q, which is exact for q >= 1/4, is inverted.
 func (s StudentT) outerQuantile(q float64) float64 {
 	if q >= 0.25 && q <= 0.5 {
-		return math.Sqrt(F{1, s.Nu}.Quantile(1 - 2*q))
+		if v := (F{1, s.Nu}).Quantile(1 - 2*q); v < 1e250 {
+			return math.Sqrt(v)
+		}
 	}
 	return invertTail(s, q, true, studentStart(s.Nu, q))
 }

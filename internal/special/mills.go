@@ -66,6 +66,14 @@ func xmlog1p(z float64) float64 {
 	return s * (z - p)
 }
 
+// firstCut returns the root of c t + v t²/2 = millsCut.
+func firstCut(c, v float64) float64 {
+	if c > 1e150 {
+		return millsCut / c
+	}
+	return 2 * millsCut / (c + math.Sqrt(c*c+2*millsCut*v))
+}
+
 // gammaMills returns ∫_0^∞ exp(-(c t + x E(t))) dt, c >= 0, with
 // E(t) = e^t - 1 - t for up and e^-t - 1 + t otherwise.
 func gammaMills(c, x float64, up bool) float64 {
@@ -74,7 +82,7 @@ func gammaMills(c, x float64, up bool) float64 {
 		sign = 1
 	}
 	// Newton for φ(T) = 44 from the root of the quadratic part.
-	t := 2 * millsCut / (c + math.Sqrt(c*c+2*millsCut*x))
+	t := firstCut(c, x)
 	for range 12 {
 		e := expm1mx(sign * t)
 		f := c*t + x*e - millsCut
@@ -101,7 +109,7 @@ func betaMills(c, n, x, y float64) float64 {
 	if y < x {
 		z, sign = y, 1
 	}
-	t := 2 * millsCut / (c + math.Sqrt(c*c+2*millsCut*n*x*y))
+	t := firstCut(c, n*x*y)
 	for range 40 {
 		e := expm1mx(sign * t)
 		v := z * (e + sign*t)
