@@ -55,7 +55,7 @@ func (f F) beta(x float64) (X, Y dd.DD) {
 	}
 	p := dd.Prod(f.D1, x)
 	s := p.AddF(d2)
-	return p.Div(s), dd.From(d2).Div(s)
+	return p.DivQuick(s), dd.From(d2).DivQuick(s)
 }
 
 // tiny is where X or Y is taken by its logarithm only.

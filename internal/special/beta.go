@@ -37,6 +37,16 @@ func betaKernelConstant(a, b dd.DD) Scaled {
 //	                 a (u - log(1+u)) + b (v - log(1+v)), a u = -b v = x b - y a
 //	                 (Loader 2000), so that nothing cancels near the mean
 func BetaKernel(a, b, x, y dd.DD) Scaled {
+	if a.Lo == 0 && b.Lo == 0 {
+		if k, ok := quickBetaKernel(a.Hi, b.Hi, x, y); ok {
+			return k
+		}
+	}
+	return betaKernel(a, b, x, y)
+}
+
+// betaKernel is BetaKernel in full double-double.
+func betaKernel(a, b, x, y dd.DD) Scaled {
 	if min(a.Hi, b.Hi) < stirlingMin {
 		c := betaKernelConstant(a, b)
 		c.L = c.L.Add(a.Mul(log1m(x, y)).Add(b.Mul(log1m(y, x))))
@@ -78,11 +88,16 @@ func BetaTail(a, b, x, y dd.DD) (t Scaled, upper bool) {
 	case y.Hi <= 0:
 		return Scaled{}, true
 	}
+	if a.Lo == 0 && b.Lo == 0 {
+		if t, upper, ok := quickBetaTail(a.Hi, b.Hi, x, y); ok {
+			return t, upper
+		}
+	}
 	c := a.Mul(y).Sub(b.Mul(x))
 	if c.Hi < 0 {
 		a, b, x, y, c, upper = b, a, y, x, c.Neg(), true
 	}
-	f := BetaKernel(a, b, x, y)
+	f := betaKernel(a, b, x, y)
 	s := a.Add(b)
 	r := x.Hi * max(1, s.Hi/(a.Hi+1))
 	switch {

@@ -13,6 +13,16 @@ import (
 //	a >= 16  sqrt(a/2π) exp(-a D - δ(a)), D = x/a - 1 - log(x/a) (Loader 2000, with
 //	         Stirling's error δ), so that nothing cancels near x = a
 func GammaKernel(a, x dd.DD) Scaled {
+	if a.Lo == 0 {
+		if k, ok := quickGammaKernel(a.Hi, x); ok {
+			return k
+		}
+	}
+	return gammaKernel(a, x)
+}
+
+// gammaKernel is GammaKernel in full double-double.
+func gammaKernel(a, x dd.DD) Scaled {
 	if a.Hi < stirlingMin {
 		g := Gamma1p(a)
 		return Scaled{
@@ -50,8 +60,13 @@ func GammaTail(a, x dd.DD) (t Scaled, upper bool) {
 	case math.IsInf(x.Hi, 1):
 		return Scaled{}, true
 	}
+	if a.Lo == 0 {
+		if t, upper, ok := quickGammaTail(a.Hi, x); ok {
+			return t, upper
+		}
+	}
 	if x.Cmp(a) <= 0 {
-		f := GammaKernel(a, x)
+		f := gammaKernel(a, x)
 		if a.Hi < 30 || x.Hi < 0.6*a.Hi {
 			f.M = f.M.Mul(gammaSeries(a, x, 0x1p-40, 0x1p-76))
 		} else {
@@ -59,7 +74,7 @@ func GammaTail(a, x dd.DD) (t Scaled, upper bool) {
 		}
 		return f, false
 	}
-	f := GammaKernel(a, x)
+	f := gammaKernel(a, x)
 	if x.Hi < 8 {
 		f.M = f.M.Mul(gammaSeries(a, x, 0, 0x1p-106))
 		return f.complement(), true

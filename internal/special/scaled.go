@@ -12,6 +12,9 @@ type Scaled struct{ L, M dd.DD }
 
 // Split returns m and k with the value m 2^k.
 func (s Scaled) Split() (m dd.DD, k int) {
+	if s.L.Hi == 0 {
+		return s.M, 0
+	}
 	m, k = dd.ExpScaled(s.L)
 	return m.Mul(s.M), k
 }
@@ -19,6 +22,9 @@ func (s Scaled) Split() (m dd.DD, k int) {
 // Float64 returns the value rounded to a float64: 0 below the smallest
 // denormal, +Inf above the range.
 func (s Scaled) Float64() float64 {
+	if s.L.Hi == 0 {
+		return s.M.Hi + s.M.Lo
+	}
 	m, k := s.Split()
 	return math.Ldexp(m.Hi+m.Lo, k)
 }
@@ -26,6 +32,9 @@ func (s Scaled) Float64() float64 {
 // DD returns the value as a double-double; it is 0 or loses its low part below 1e-290.
 func (s Scaled) DD() dd.DD {
 	m, k := s.Split()
+	if k == 0 {
+		return m
+	}
 	return m.Scale(k)
 }
 
@@ -36,7 +45,12 @@ func (s Scaled) Complement() float64 {
 }
 
 // LogDD returns the natural logarithm of the value.
-func (s Scaled) LogDD() dd.DD { return s.L.Add(dd.Log(s.M)) }
+func (s Scaled) LogDD() dd.DD {
+	if s.L.Hi == 0 {
+		return dd.Log(s.M)
+	}
+	return s.L.Add(dd.Log(s.M))
+}
 
 // Log returns the natural logarithm of the value as a float64.
 func (s Scaled) Log() float64 {

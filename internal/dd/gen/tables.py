@@ -98,4 +98,17 @@ for i in range(128):
     h, l = split(-log(cc), 2)
     lines.append("\t{%s, %s, %s}," % (lit(c), lit(h), lit(l)))
 lines.append("}")
+lines.append("")
+lines.append("// exp2Table[j] = 2^(j/64).")
+lines.append("var exp2Table = [64]DD{")
+for j in range(64):
+    lines.append("\t%s," % dd(mpf(2) ** (mpf(j) / 64)))
+lines.append("}")
+lines.append("")
+v = log(2) / 64
+lines.append("// log 2 / 64 in three parts, the first of 36 bits.")
+lines.append("const (")
+for n, x in (("1", trunc(v, 36)), ("2", float(v - mpf(trunc(v, 36)))), ("3", float(v - mpf(trunc(v, 36)) - mpf(float(v - mpf(trunc(v, 36))))))):
+    lines.append("\tln2by64p%s = %s" % (n, lit(x)))
+lines.append(")")
 open("elementary_tables.go", "w").write("\n".join(lines) + "\n")

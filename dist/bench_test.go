@@ -1,0 +1,104 @@
+package dist_test
+
+import (
+	"fmt"
+	"math"
+	"testing"
+
+	"subsume.example/dist"
+
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+var (
+	sink  float64
+	point = 0.1
+	power = -3.3
+)
+
+// reference times of the machine, to re-base the others.
+func machine(b *testing.B) {
+	b.Run("math.Erfc(0.1)", func(b *testing.B) {
+		for b.Loop() {
+			sink = math.Erfc(point)
+		}
+	})
+	b.Run("math.Exp(-3.3)", func(b *testing.B) {
+		for b.Loop() {
+			sink = math.Exp(power)
+		}
+	})
+}
+
+// BenchmarkTail times upper tails at the 5 % point, the centre (half) and far out (1e-20), and the
+// lower tail at the same points, with gonum's where it has the law.
+func BenchmarkTail(b *testing.B) {
+	machine(b)
+	cases := []struct {
+		name string
+		law  dist.Law
+		peer interface{ Survival(float64) float64 }
+	}{
+		{"ChiSquared(5)", dist.ChiSquared{K: 5}, distuv.ChiSquared{K: 5}},
+		{"ChiSquared(4)", dist.ChiSquared{K: 4}, distuv.ChiSquared{K: 4}},
+		{"ChiSquared(1)", dist.ChiSquared{K: 1}, distuv.ChiSquared{K: 1}},
+		{"ChiSquared(4.7)", dist.ChiSquared{K: 4.7}, distuv.ChiSquared{K: 4.7}},
+		{"ChiSquared(99.5)", dist.ChiSquared{K: 99.5}, distuv.ChiSquared{K: 99.5}},
+		{"ChiSquared(1e6)", dist.ChiSquared{K: 1e6}, distuv.ChiSquared{K: 1e6}},
+		{"F(3,20)", dist.F{D1: 3, D2: 20}, distuv.F{D1: 3, D2: 20}},
+		{"F(4,27)", dist.F{D1: 4, D2: 27}, distuv.F{D1: 4, D2: 27}},
+		{"F(3,21)", dist.F{D1: 3, D2: 21}, distuv.F{D1: 3, D2: 21}},
+		{"F(3.3,17.6)", dist.F{D1: 3.3, D2: 17.6}, distuv.F{D1: 3.3, D2: 17.6}},
+		{"F(40,200)", dist.F{D1: 40, D2: 200}, distuv.F{D1: 40, D2: 200}},
+		{"StudentT(12)", dist.StudentT{Nu: 12}, distuv.StudentsT{Sigma: 1, Nu: 12}},
+		{"StudentT(7.4)", dist.StudentT{Nu: 7.4}, distuv.StudentsT{Sigma: 1, Nu: 7.4}},
+	}
+	for _, c := range cases {
+		for _, at := range []struct {
+			name string
+			q    float64
+		}{{"5%", 0.05}, {"centre", 0.5}, {"far", 1e-20}} {
+			x := c.law.UpperQuantile(at.q)
+			if at.q == 0.5 {
+				x *= 0.97
+			}
+			b.Run(c.name+"/"+at.name+"/upper", func(b *testing.B) {
+				b.ReportAllocs()
+				switch law := c.law.(type) {
+				case dist.F:
+					for b.Loop() {
+						sink = law.Survival(x)
+					}
+				case dist.ChiSquared:
+					for b.Loop() {
+						sink = law.Survival(x)
+					}
+				case dist.StudentT:
+					for b.Loop() {
+						sink = law.Survival(x)
+					}
+				}
+			})
+			b.Run(c.name+"/"+at.name+"/gonum", func(b *testing.B) {
+				for b.Loop() {
+					sink = c.peer.Survival(x)
+				}
+			})
+		}
+	}
+}
+
+// BenchmarkQuantile times quantiles.
+func BenchmarkQuantile(b *testing.B) {
+	machine(b)
+	for _, law := range []dist.Law{dist.ChiSquared{K: 5}, dist.ChiSquared{K: 4.7}, dist.F{D1: 3, D2: 20}, dist.F{D1: 3.3, D2: 17.6}, dist.StudentT{Nu: 12}} {
+		for _, q := range []float64{0.05, 1e-20} {
+			b.Run(fmt.Sprintf("%v/%g", law, q), func(b *testing.B) {
+				b.ReportAllocs()
+				for b.Loop() {
+					sink = law.UpperQuantile(q)
+				}
+			})
+		}
+	}
+}
