@@ -39,14 +39,17 @@ func chiTail(k float64, x dd.DD, near float64) centralTail {
 	return centralTail{t, upper}
 }
 
-// chiKernel returns the density of log X.
-func chiKernel(k float64, x dd.DD, near float64) special.Scaled {
+// chiKernel returns the density of log X; quick answers are not fit for logarithms near 0.
+func chiKernel(k float64, x dd.DD, near float64, quick bool) special.Scaled {
 	if near < 1e-270 {
 		_, d := special.GammaTailTiny(half(k), chiLogHalf(k, x, near))
 		return d
 	}
 	if math.IsInf(x.Hi, 1) {
 		return special.Scaled{}
+	}
+	if quick {
+		return special.GammaKernelQuick(half(k), x.MulF(0.5))
 	}
 	return special.GammaKernel(half(k), x.MulF(0.5))
 }
@@ -62,8 +65,8 @@ func chiLogHalf(k float64, x dd.DD, near float64) dd.DD {
 
 func (c ChiSquared) tail(x float64) centralTail { return chiTail(c.K, dd.From(x), x) }
 
-func (c ChiSquared) density(x float64) special.Scaled {
-	return perX(chiKernel(c.K, dd.From(x), x), x)
+func (c ChiSquared) density(x float64, quick bool) special.Scaled {
+	return perX(chiKernel(c.K, dd.From(x), x, quick), x)
 }
 
 // CDF returns P(X <= x): 0 for x <= 0, 1 at +Inf, NaN for NaN or a bad parameter.
@@ -111,7 +114,7 @@ func (c ChiSquared) Prob(x float64) float64 {
 	case x == 0:
 		return densityAtZero(c.K/2, 0.5)
 	}
-	return c.density(x).Float64()
+	return c.density(x, true).Float64()
 }
 
 // LogProb returns the logarithm of the density.
@@ -124,11 +127,11 @@ func (c ChiSquared) LogProb(x float64) float64 {
 	case x == 0:
 		return math.Log(densityAtZero(c.K/2, 0.5))
 	}
-	return c.density(x).Log()
+	return c.density(x, false).Log()
 }
 
 func (c ChiSquared) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {
-	return c.tail(x).eval(upper, c.density(x))
+	return c.tail(x).eval(upper, c.density(x, true))
 }
 
 func (c ChiSquared) support() (lo, hi float64) { return 0, math.Inf(1) }

@@ -80,10 +80,10 @@ func (f F) tail(x float64) centralTail {
 	return centralTail{t, upper}
 }
 
-// density returns the density at 0 < x < +Inf.
-func (f F) density(x float64) special.Scaled {
+// density returns the density at 0 < x < +Inf; quick answers are not fit for logarithms near 0.
+func (f F) density(x float64, quick bool) special.Scaled {
 	if math.IsInf(f.D2, 1) {
-		return perX(chiKernel(f.D1, f.scaleChi(x), x), x)
+		return perX(chiKernel(f.D1, f.scaleChi(x), x, quick), x)
 	}
 	a, b := half(f.D1), half(f.D2)
 	switch odds := f.D1 / f.D2 * x; {
@@ -95,6 +95,9 @@ func (f F) density(x float64) special.Scaled {
 		return perX(k, x)
 	}
 	X, Y := f.beta(x)
+	if quick {
+		return perX(special.BetaKernelQuick(a, b, X, Y), x)
+	}
 	return perX(special.BetaKernel(a, b, X, Y), x)
 }
 
@@ -143,7 +146,7 @@ func (f F) Prob(x float64) float64 {
 	case x == 0:
 		return densityAtZero(f.D1/2, 1)
 	}
-	return f.density(x).Float64()
+	return f.density(x, true).Float64()
 }
 
 // LogProb returns the logarithm of the density.
@@ -167,11 +170,11 @@ func (f F) LogProb(x float64) float64 {
 		l := half(f.D2).AddF(1).Mul(dd.Log1p(u))
 		return -(l.Hi + l.Lo)
 	}
-	return f.density(x).Log()
+	return f.density(x, false).Log()
 }
 
 func (f F) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {
-	return f.tail(x).eval(upper, f.density(x))
+	return f.tail(x).eval(upper, f.density(x, true))
 }
 
 func (f F) support() (lo, hi float64) { return 0, math.Inf(1) }

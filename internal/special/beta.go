@@ -37,16 +37,6 @@ func betaKernelConstant(a, b dd.DD) Scaled {
 //	                 a (u - log(1+u)) + b (v - log(1+v)), a u = -b v = x b - y a
 //	                 (Loader 2000), so that nothing cancels near the mean
 func BetaKernel(a, b, x, y dd.DD) Scaled {
-	if a.Lo == 0 && b.Lo == 0 {
-		if k, ok := quickBetaKernel(a.Hi, b.Hi, x, y); ok {
-			return k
-		}
-	}
-	return betaKernel(a, b, x, y)
-}
-
-// betaKernel is BetaKernel in full double-double.
-func betaKernel(a, b, x, y dd.DD) Scaled {
 	if min(a.Hi, b.Hi) < stirlingMin {
 		c := betaKernelConstant(a, b)
 		c.L = c.L.Add(a.Mul(log1m(x, y)).Add(b.Mul(log1m(y, x))))
@@ -68,6 +58,17 @@ func log1m(x, y dd.DD) dd.DD {
 		return dd.Log1p(y.Neg())
 	}
 	return dd.Log(x)
+}
+
+// BetaKernelQuick is BetaKernel to 2^-58 where the quick path reaches, else in full. Its
+// logarithm is not to be used near 0.
+func BetaKernelQuick(a, b, x, y dd.DD) Scaled {
+	if a.Lo == 0 && b.Lo == 0 {
+		if k, ok := quickBetaKernel(a.Hi, b.Hi, x, y); ok {
+			return k
+		}
+	}
+	return BetaKernel(a, b, x, y)
 }
 
 // BetaTail returns one tail of the beta law at x, y = 1 - x: the upper one
@@ -97,7 +98,7 @@ func BetaTail(a, b, x, y dd.DD) (t Scaled, upper bool) {
 	if c.Hi < 0 {
 		a, b, x, y, c, upper = b, a, y, x, c.Neg(), true
 	}
-	f := betaKernel(a, b, x, y)
+	f := BetaKernel(a, b, x, y)
 	s := a.Add(b)
 	r := x.Hi * max(1, s.Hi/(a.Hi+1))
 	switch {

@@ -13,16 +13,6 @@ import (
 //	a >= 16  sqrt(a/2π) exp(-a D - δ(a)), D = x/a - 1 - log(x/a) (Loader 2000, with
 //	         Stirling's error δ), so that nothing cancels near x = a
 func GammaKernel(a, x dd.DD) Scaled {
-	if a.Lo == 0 {
-		if k, ok := quickGammaKernel(a.Hi, x); ok {
-			return k
-		}
-	}
-	return gammaKernel(a, x)
-}
-
-// gammaKernel is GammaKernel in full double-double.
-func gammaKernel(a, x dd.DD) Scaled {
 	if a.Hi < stirlingMin {
 		g := Gamma1p(a)
 		return Scaled{
@@ -43,6 +33,17 @@ func deviancePart(u, p, q dd.DD) dd.DD {
 		return dd.Log1pmx(u).Neg()
 	}
 	return u.Sub(dd.Log(p.Div(q)))
+}
+
+// GammaKernelQuick is GammaKernel to 2^-58 where the quick path reaches, else in full. Its
+// logarithm is not to be used near 0.
+func GammaKernelQuick(a, x dd.DD) Scaled {
+	if a.Lo == 0 {
+		if k, ok := quickGammaKernel(a.Hi, x); ok {
+			return k
+		}
+	}
+	return GammaKernel(a, x)
 }
 
 // GammaTail returns one tail of the gamma law of shape a at x, a > 0, x >= 0: the
@@ -66,7 +67,7 @@ func GammaTail(a, x dd.DD) (t Scaled, upper bool) {
 		}
 	}
 	if x.Cmp(a) <= 0 {
-		f := gammaKernel(a, x)
+		f := GammaKernel(a, x)
 		if a.Hi < 30 || x.Hi < 0.6*a.Hi {
 			f.M = f.M.Mul(gammaSeries(a, x, 0x1p-40, 0x1p-76))
 		} else {
@@ -74,7 +75,7 @@ func GammaTail(a, x dd.DD) (t Scaled, upper bool) {
 		}
 		return f, false
 	}
-	f := gammaKernel(a, x)
+	f := GammaKernel(a, x)
 	if x.Hi < 8 {
 		f.M = f.M.Mul(gammaSeries(a, x, 0, 0x1p-106))
 		return f.complement(), true
