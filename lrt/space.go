@@ -69,6 +69,8 @@ type Fit struct {
 	Deviance float64
 	// Estimate holds root coordinates of a declared model; nil elsewhere.
 	Estimate []float64
+	// Dropped counts the rows left out before the fit because a value was missing.
+	Dropped int
 	// Criterion is what was maximised.
 	Criterion Criterion
 	// Warnings are what a reader of the fit should know.
