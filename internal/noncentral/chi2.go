@@ -27,7 +27,7 @@ func chi2Saddle(k, lambda, x float64) (a, b float64) {
 
 func chi2Mixture(k, lambda float64, x dd.DD) mixture {
 	a := dd.From(k / 2)
-	m := mixture{a: k / 2, half: lambda / 2}
+	m := mixture{a: k / 2, half: dd.From(lambda / 2)}
 	m.a1 = a.AddF(1)
 	m.y = x.MulF(0.5)
 	if x.Hi < 1e-270 {

@@ -25,11 +25,14 @@ type fArg struct {
 	logC, logC1 dd.DD
 }
 
-func newFArg(d1, d2, x float64) fArg {
-	fx, ex := math.Frexp(x)
+// newFArg takes x 2^ex.
+func newFArg(d1, d2 float64, x dd.DD, ex int) fArg {
+	fx, e0 := math.Frexp(x.Hi)
+	ex += e0
+	fl := math.Ldexp(x.Lo, -e0)
 	f1, e1 := math.Frexp(d1)
 	f2, e2 := math.Frexp(d2)
-	m := dd.Prod(fx, f1).DivF(f2)
+	m := dd.DD{Hi: fx, Lo: fl}.MulF(f1).DivF(f2)
 	e := ex + e1 - e2
 	g := fArg{c: m, shift: e}
 	if e > -900 && e < 900 {
@@ -71,7 +74,7 @@ func fSaddle(a, b, lam2, y float64) (rho, A float64) {
 	return rho, lam2 * y * (1 + 1/rho)
 }
 
-func fMixture(a, b, half float64, g *fArg) mixture {
+func fMixture(a, b float64, half dd.DD, g *fArg) mixture {
 	da, db := dd.From(a), dd.From(b)
 	m := mixture{a: a, b: b, half: half}
 	m.beta = true
@@ -107,16 +110,21 @@ type F struct {
 
 // AtF prepares noncentral F at x, for finite d1, d2, x > 0, λ >= 0.
 func AtF(d1, d2, lambda, x float64) (p F) {
-	g := newFArg(d1, d2, x)
+	return atF(d1, d2, dd.From(lambda/2), dd.From(x), 0)
+}
+
+// atF takes λ/2 and x 2^ex in double-double.
+func atF(d1, d2 float64, half, x dd.DD, ex int) (p F) {
+	g := newFArg(d1, d2, x, ex)
 	a, b := d1/2, d2/2
-	rho, A := fSaddle(a, b, lambda/2, g.y().Hi)
+	rho, A := fSaddle(a, b, half.Hi, g.y().Hi)
 	if A+b*math.Log1p(rho) >= fFew {
 		p.contour = true
-		p.path = newFPath(a, b, lambda/2, &g, rho)
+		p.path = newFPath(a, b, half, &g, rho)
 		return p
 	}
 	p.right = g.beyond(rho)
-	p.mix = fMixture(a, b, lambda/2, &g)
+	p.mix = fMixture(a, b, half, &g)
 	return p
 }
 

@@ -38,7 +38,7 @@ type fPath struct {
 	eta   float64 // distance of the pole from the path, +Inf if no matter
 }
 
-func newFPath(a, b, lam2 float64, g *fArg, rho float64) fPath {
+func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64) fPath {
 	p := fPath{a: a, b: b, rho: rho, bent: b < 25}
 	r1 := dd.Sum(1, rho)
 	u := g.y().Mul(r1).DivF(rho)
@@ -53,11 +53,11 @@ func newFPath(a, b, lam2 float64, g *fArg, rho float64) fPath {
 		l2 = dd.Log(dd.From(rho)).Sub(g.logC)
 	}
 	p.u, p.e = u.Float64(), e.Float64()
-	A := u.MulF(lam2)
+	A := u.Mul(lam2)
 	p.bigA = A.Float64()
 	p.delta = A.AddF(a).Sub(dd.Prod(b, rho)).Float64()
-	p.phi = e.MulF(lam2).Add(dd.Sum(a, b).Mul(l1)).Sub(l2.MulF(a))
-	slope := math.Abs(lam2 + a - b*g.c.Hi) // |φ'(1)|
+	p.phi = e.Mul(lam2).Add(dd.Sum(a, b).Mul(l1)).Sub(l2.MulF(a))
+	slope := math.Abs(lam2.Hi + a - b*g.c.Hi) // |φ'(1)|
 	if p.bent {
 		p.n = bentNodes(b)
 		s := math.Expm1(l2.Float64() / 2)

@@ -50,27 +50,28 @@ func (m *mixture) lowerSum() dd.DD {
 	d, half := &m.drops, m.half
 	slow := m.beta && m.y.Hi > 0.5
 	z := 1.0
-	if half > 1 {
-		_, e := math.Frexp(half)
+	if half.Hi > 1 {
+		_, e := math.Frexp(half.Hi)
 		z = math.Ldexp(1, e)
 	}
+	hz := half.MulF(1 / z)
 	// T_j carries z^j, w_j and W_j carry z^-j: neither leaves the range.
 	w, W, T, sum := dd.From(1), dd.From(1), dd.From(1), dd.DD{}
 	for j := range maxTerms {
 		f := float64(j)
 		t := T.Mul(W)
-		if slow && w.Hi < tiny/8*W.Hi && half < (f+1)/2 {
+		if slow && w.Hi < tiny/8*W.Hi && half.Hi < (f+1)/2 {
 			// the rest is W Σ T_i
 			return sum.Add(W.MulF(math.Pow(z, f)).Mul(m.lowerRatio(j)))
 		}
 		sum = sum.Add(t)
 		r := d.ratio(f).MulF(z)
 		// the quotient of all later terms is at most q
-		q := r.Hi / z * (1 + w.Hi/W.Hi*half/(f+1))
+		q := r.Hi / z * (1 + w.Hi/W.Hi*half.Hi/(f+1))
 		if t.Hi < tiny*sum.Hi*(1-q) {
 			break
 		}
-		w = w.MulF(half / z).DivF(f + 1)
+		w = w.Mul(hz).DivF(f + 1)
 		W = W.MulF(1 / z).Add(w)
 		T = T.Mul(r)
 	}
@@ -78,14 +79,14 @@ func (m *mixture) lowerSum() dd.DD {
 }
 
 // upperSum returns Σ w_j Q_j over w_0 T_0 with q0 = Q_0/T_0.
-func upperSum(d *drops, half float64, q0 dd.DD) dd.DD {
+func upperSum(d *drops, half, q0 dd.DD) dd.DD {
 	w, Q, T, sum := dd.From(1), q0, dd.From(1), dd.DD{}
 	for j := range maxTerms {
 		f := float64(j)
 		sum = sum.Add(w.Mul(Q))
-		w = w.MulF(half).DivF(f + 1)
+		w = w.Mul(half).DivF(f + 1)
 		next := Q.Add(T)
-		q := half / (f + 2) * next.Hi / Q.Hi // at least the ratio of all later terms
+		q := half.Hi / (f + 2) * next.Hi / Q.Hi // at least the ratio of all later terms
 		if q < 1 && w.Hi*next.Hi < tiny*sum.Hi*(1-q) {
 			break
 		}
@@ -97,7 +98,7 @@ func upperSum(d *drops, half float64, q0 dd.DD) dd.DD {
 
 // kernelSum returns Σ w_j T_j (a+j) over w_0 T_0 a: the density of log X over its
 // central value.
-func kernelSum(d *drops, a, half float64) dd.DD {
+func kernelSum(d *drops, a float64, half dd.DD) dd.DD {
 	t, sum := dd.From(1), dd.From(1)
 	for j := range maxTerms {
 		f := float64(j)
@@ -105,7 +106,7 @@ func kernelSum(d *drops, a, half float64) dd.DD {
 		if d.beta {
 			n = n.Mul(d.p.AddF(f))
 		}
-		r := n.MulF(half).Div(dd.Sum(a, f).MulF(f + 1))
+		r := n.Mul(half).Div(dd.Sum(a, f).MulF(f + 1))
 		t = t.Mul(r)
 		sum = sum.Add(t)
 		if r.Hi < 0.5 && t.Hi < tiny*sum.Hi {
@@ -116,11 +117,11 @@ func kernelSum(d *drops, a, half float64) dd.DD {
 }
 
 // dropSum returns Σ w_j T_j over w_0 T_0.
-func dropSum(d *drops, half float64) dd.DD {
+func dropSum(d *drops, half dd.DD) dd.DD {
 	t, sum := dd.From(1), dd.From(1)
 	for j := range maxTerms {
 		f := float64(j)
-		r := d.ratio(f).MulF(half).DivF(f + 1)
+		r := d.ratio(f).Mul(half).DivF(f + 1)
 		t = t.Mul(r)
 		sum = sum.Add(t)
 		if r.Hi < 0.5 && t.Hi < tiny*sum.Hi {
@@ -143,11 +144,12 @@ func complementOver(s, t special.Scaled) dd.DD {
 // mixture is a Poisson mixture of central laws at a point.
 type mixture struct {
 	drops
-	a, b, half float64
-	y1         dd.DD          // 1-y, for F
-	t0         special.Scaled // T_0
-	end        int            // -1, +1: y is at 0 or 1 to all digits, the central tail that is not 1 is c
-	c          special.Scaled
+	a, b float64
+	half dd.DD          // λ/2
+	y1   dd.DD          // 1-y, for F
+	t0   special.Scaled // T_0
+	end  int            // -1, +1: y is at 0 or 1 to all digits, the central tail that is not 1 is c
+	c    special.Scaled
 }
 
 // upperRatio returns Q_0/T_0.
@@ -192,7 +194,7 @@ func (m *mixture) tail(upper bool) special.Scaled {
 
 // scaled returns s T_0 w_0.
 func (m *mixture) scaled(s dd.DD) special.Scaled {
-	return special.Scaled{L: m.t0.L.AddF(-m.half), M: m.t0.M.Mul(s)}
+	return special.Scaled{L: m.t0.L.Sub(m.half), M: m.t0.M.Mul(s)}
 }
 
 // kernel returns the density of log X.
