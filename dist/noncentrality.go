@@ -70,6 +70,73 @@ func NoncentralityF(d1, d2, x, survival float64) (float64, error) {
 	})
 }
 
+// NoncentralityT returns the Delta, of either sign, for which NoncentralT{nu, Delta}.Survival(t) =
+// survival; the confidence limits of a standardized difference come from it.
+//
+// It wants 0 < nu <= +Inf, a finite t and 0 < survival < 1 and returns NaN and a
+// *ParamError otherwise.
+func NoncentralityT(nu, t, survival float64) (float64, error) {
+	const name = "NoncentralityT"
+	switch {
+	case !(nu > 0):
+		return math.NaN(), &ParamError{name, "nu", nu, wantPositiveOrInf}
+	case !(math.Abs(t) <= math.MaxFloat64):
+		return math.NaN(), &ParamError{name, "t", t, "a finite number"}
+	case !(survival > 0 && survival < 1):
+		return math.NaN(), &ParamError{name, "survival", survival, "a number between 0 and 1"}
+	}
+	if math.IsInf(nu, 1) {
+		return t - special.NormalUpperQuantile(survival), nil
+	}
+	if t == 0 {
+		return -special.NormalUpperQuantile(survival), nil
+	}
+	upper := survival <= 0.5
+	goal := survival
+	if !upper {
+		goal = 1 - survival // exact
+	}
+	logGoal := dd.Log(dd.From(goal))
+	z := -normalStart(survival)
+	delta := t + z*math.Hypot(1, t/math.Sqrt(2*nu))
+	lo, hi := math.Inf(-1), math.Inf(1)
+	best, bestR := delta, math.Inf(1)
+	for range 200 {
+		v, up := noncentral.TTail(nu, t, delta)
+		r, h := logResidual(v, up, noncentral.TSlope(nu, t, delta), upper, logGoal)
+		if math.Abs(r) < bestR {
+			best, bestR = delta, math.Abs(r)
+		}
+		if r == 0 {
+			break
+		}
+		if (r > 0) == upper {
+			hi = delta
+		} else {
+			lo = delta
+		}
+		next := delta - r/h
+		if math.Abs(next-delta) <= 0x1p-53*math.Abs(delta) {
+			return next, nil
+		}
+		if !(next > lo && next < hi) {
+			switch {
+			case math.IsInf(hi, 1):
+				next = delta + 4*(1+math.Abs(delta))
+			case math.IsInf(lo, -1):
+				next = delta - 4*(1+math.Abs(delta))
+			default:
+				next = lo + (hi-lo)/2
+			}
+		}
+		if next == delta || next == lo || next == hi {
+			break
+		}
+		delta = next
+	}
+	return best, nil
+}
+
 func checkFinder(name string, x, survival float64) error {
 	if !finiteNonnegative(x) {
 		return &ParamError{name, "x", x, "a finite number at or above 0"}

@@ -17,6 +17,7 @@ func init() {
 	Tables = append(Tables,
 		Table{File: "ncx2", Params: 2, New: func(p []float64) Distribution { return dist.NoncentralChiSquared{K: p[0], Lambda: p[1]} }, Everyday: everyday(1)},
 		Table{File: "ncf", Params: 3, New: ncf, Everyday: everyday(2)},
+		Table{File: "nct", Params: 2, New: func(p []float64) Distribution { return dist.NoncentralT{Nu: p[0], Delta: p[1]} }, Everyday: everyday(1)},
 		Table{File: "ncfpower", Params: 3, New: ncf, Everyday: everyday(2)},
 	)
 }

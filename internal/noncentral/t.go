@@ -124,12 +124,13 @@ func newTTail(nu, t, delta float64) tMix {
 	return m
 }
 
-// newTDensity prepares E s φ(ts - δ).
-func newTDensity(nu, t, delta float64) tMix {
+// newTGauss prepares E s^extra φ(ts - δ), extra 0 or 1.
+func newTGauss(nu, t, delta, extra float64) tMix {
 	m := tMix{nu: nu, t: t, delta: delta}
-	m.s0 = quadraticPeak(nu, t, delta, nu+1)
+	m.s0 = quadraticPeak(nu, t, delta, nu+extra)
 	ts := t * m.s0
-	m.setup(1, nu+1, 2*nu*m.s0*m.s0+ts*(ts-delta)+ts*ts)
+	m.mills = true
+	m.setup(extra, nu+extra, 2*nu*m.s0*m.s0+ts*(ts-delta)+ts*ts)
 	return m
 }
 
@@ -141,7 +142,7 @@ func (m *tMix) setup(extra float64, rate, curv float64) {
 	z := dd.Prod(m.t, m.s0).AddF(-m.delta)
 	m.z0 = z.Float64()
 	m.p = m.t * m.s0
-	m.mills = m.z0 > 0 || extra > 0
+	m.mills = m.mills || m.z0 > 0
 	l := x.MulF(-2).Add(dd.Sum(m.nu, extra))
 	if m.mills {
 		l = l.Sub(z.Mul(dd.Prod(m.t, m.s0)))
@@ -239,8 +240,7 @@ func TTail(nu, t, delta float64) (v special.Scaled, upper bool) {
 	}
 	switch {
 	case t == 0:
-		upper = delta <= 0
-		v = normalTail(-math.Abs(delta))
+		v, upper = NormalTail(0, delta)
 	case delta <= 0:
 		v, upper = tSum(nu, t, delta), true
 	case delta < tClose:
@@ -280,11 +280,6 @@ func add(a, b special.Scaled) special.Scaled {
 	return a
 }
 
-// normalTail returns P(Z <= z) for z <= 0.
-func normalTail(z float64) special.Scaled {
-	return special.Scaled{L: dd.Prod(z, z).MulF(-0.5), M: invSqrt2Pi.MulF(special.Mills(-z))}
-}
-
 // tSum returns E Q(ts - δ).
 func tSum(nu, t, delta float64) special.Scaled {
 	m := newTTail(nu, t, delta)
@@ -300,6 +295,28 @@ func tSide(nu, t, delta float64, upper bool) special.Scaled {
 
 // TDensity returns the density of noncentral t.
 func TDensity(nu, t, delta float64) special.Scaled {
-	m := newTDensity(nu, t, delta)
+	m := newTGauss(nu, t, delta, 1)
 	return m.sum(false)
+}
+
+// TSlope returns the derivative of the upper tail in δ, E φ(ts - δ).
+func TSlope(nu, t, delta float64) special.Scaled {
+	m := newTGauss(nu, t, delta, 0)
+	return m.sum(false)
+}
+
+// NormalTail returns one tail of the normal law of mean δ at t.
+func NormalTail(t, delta float64) (v special.Scaled, upper bool) {
+	z := dd.Sum(t, -delta)
+	upper = z.Hi > 0
+	if upper {
+		z = z.Neg()
+	}
+	return special.Scaled{L: z.Sqr().MulF(-0.5), M: invSqrt2Pi.MulF(special.Mills(-z.Hi))}, upper
+}
+
+// NormalDensity returns the density of the normal law of mean δ at t.
+func NormalDensity(t, delta float64) special.Scaled {
+	z := dd.Sum(t, -delta)
+	return special.Scaled{L: z.Sqr().MulF(-0.5), M: invSqrt2Pi}
 }
