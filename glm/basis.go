@@ -1,0 +1,168 @@
+package glm
+
+import (
+	"math"
+
+	"subsume.example/internal/dd"
+	"subsume.example/internal/linalg"
+	"subsume.example/lrt"
+)
+
+// The fit is computed for y' on columns b, with y = 2^E y' + c·1 and asked
+// columns x that are polynomials in the b. So the asked coefficients are
+//
+//	β = 2^E V γ + c at the carrier of the constant,
+//
+// where column i of V writes basis column i in the asked columns, the constant
+// going to the carrier: b = 2^−e x − 2^−e shift·1, and likewise for powers.
+
+// weight is the weight of one asked coefficient in a linear function.
+type weight struct {
+	term, column int
+	coef         dd.DD
+}
+
+// pullback returns Vᵀ of a function of the asked coefficients of m, and the sum of its
+// weights at the carrier.
+func (j *joint) pullback(m *Model, ws []weight) (linalg.Vec, dd.DD) {
+	c := j.gram.NewVec()
+	var carried dd.DD
+	carrier := m.carrier()
+	add := func(at int, x dd.DD) { c.Set(at, c.At(at).Add(x)) }
+	for _, w := range ws {
+		b := m.cols[w.term]
+		g := j.group(b)
+		at := j.gram.Offset(g)
+		if w.term == carrier {
+			carried = carried.Add(w.coef)
+		}
+		switch p := j.basis.powers[g]; {
+		case p != nil:
+			v := p.inverse()
+			for i := range p.degree {
+				add(at+i, w.coef.Mul(v[w.column+1][i+1]))
+			}
+		case b.dense():
+			add(at+w.column, w.coef.Scale(-j.exp[j.denseColumn(g)+w.column]))
+		default:
+			add(at+w.column, w.coef)
+		}
+	}
+	if carried.Hi == 0 || !j.shifted {
+		return c, carried
+	}
+	// What the shifts of the other columns of m moved into the constant.
+	for _, b := range m.cols {
+		g := j.group(b)
+		at := j.gram.Offset(g)
+		switch p := j.basis.powers[g]; {
+		case p != nil:
+			v := p.inverse()
+			for i := range p.degree {
+				add(at+i, carried.Mul(v[0][i+1]))
+			}
+		case b.dense():
+			for k := range b.Names {
+				d := j.denseColumn(g) + k
+				if s := j.shift[d]; s != 0 {
+					add(at+k, carried.MulF(-s).Scale(-j.exp[d]))
+				}
+			}
+		}
+	}
+	return c, carried
+}
+
+// denseColumn returns the number of a group's first dense column.
+func (j *joint) denseColumn(g int) int {
+	n := 0
+	for _, b := range j.cols[:g] {
+		if b.dense() {
+			n += len(b.Names)
+		}
+	}
+	return n
+}
+
+// inverse returns V with u^i = Σ_k V[k][i] x^k, u = (x − centre)·2^−exp.
+func (p *powers) inverse() [][]dd.DD {
+	n := p.degree + 1
+	v := make([][]dd.DD, n)
+	for k := range v {
+		v[k] = make([]dd.DD, n)
+	}
+	v[0][0] = dd.From(1)
+	for i := 1; i < n; i++ {
+		for k := 0; k <= i; k++ {
+			x := v[k][i-1].MulF(-p.centre)
+			if k > 0 {
+				x = x.Add(v[k-1][i-1])
+			}
+			v[k][i] = x.Scale(-p.exp)
+		}
+	}
+	return v
+}
+
+// yShift returns the provisional mean of the response.
+func (j *joint) yShift() float64 { return j.shift[len(j.shift)-1] }
+
+// functional brings an equation between asked coefficients to the basis: the
+// function of γ and its value.
+func (j *joint) functional(m *Model, e lrt.Equation) (linalg.Vec, dd.DD, error) {
+	ws, err := m.weights(e.Names, e.Coef)
+	if err != nil {
+		return linalg.Vec{}, dd.DD{}, err
+	}
+	c, carried := j.pullback(m, ws)
+	v := dd.From(e.Value).Sub(carried.MulF(j.yShift()))
+	return c, v.Scale(-j.yExp()), nil
+}
+
+func (m *Model) weights(names []string, coef []float64) ([]weight, error) {
+	ws := make([]weight, len(names))
+	for i, n := range names {
+		t, c, ok := m.coefficient(n)
+		if !ok {
+			return nil, &CoefficientError{Name: n, Err: ErrUnknownCoefficient}
+		}
+		ws[i] = weight{t, c, dd.From(coef[i])}
+	}
+	return ws, nil
+}
+
+// asked returns the value of a function of the asked coefficients from its value on the basis.
+func (j *joint) asked(onBasis, carried dd.DD) dd.DD {
+	return onBasis.Scale(j.yExp()).Add(carried.MulF(j.yShift()))
+}
+
+// mappable reports whether asked coefficients can be read off the basis with
+// columns set aside at zero: the carrier is whole, and of no polynomial is
+// a power set aside below one that is kept.
+func (j *joint) mappable(m *Model, f *linalg.Factor) bool {
+	if !j.shifted {
+		return true
+	}
+	carrier := j.group(m.cols[m.carrier()])
+	lowest := make(map[int]int)
+	gone := make(map[int]int)
+	for _, a := range f.Aside {
+		if a.Group == carrier && !a.Empty {
+			return false
+		}
+		if j.basis.powers[a.Group] != nil {
+			if k, ok := lowest[a.Group]; !ok || a.Column < k {
+				lowest[a.Group] = a.Column
+			}
+			gone[a.Group]++
+		}
+	}
+	for g, k := range lowest {
+		if j.basis.powers[g].degree-k != gone[g] {
+			return false
+		}
+	}
+	return true
+}
+
+func ldexp(x dd.DD, k int) float64 { return math.Ldexp(x.Float64(), k) }

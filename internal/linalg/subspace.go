@@ -1,0 +1,221 @@
+package linalg
+
+import "math"
+
+// Coordinates are the columns of a joint factor as vectors on its pivots, in
+// plain double precision: what a certificate of exactness needs.
+type Coordinates struct {
+	f    *Factor
+	dim  int
+	cols [][]float64 // by column of the rest
+}
+
+// maxCoordinates is the largest dimension for which subspaces are formed.
+const maxCoordinates = 800
+
+// Coordinate returns the coordinates of all columns, ok = false where a group
+// was eliminated or the dimension is too large.
+func (f *Factor) Coordinate() (*Coordinates, bool) {
+	if f.elim >= 0 || len(f.piv) > maxCoordinates {
+		return nil, false
+	}
+	c := &Coordinates{f: f, dim: len(f.piv)}
+	c.cols = make([][]float64, f.q)
+	for k := range c.cols {
+		c.cols[k] = make([]float64, c.dim)
+		for t, p := range f.piv {
+			if p > k {
+				break
+			}
+			c.cols[k][t] = f.r[k].at(t).Float64()
+		}
+	}
+	return c, true
+}
+
+// group returns the columns of a group.
+func (c *Coordinates) group(g int) [][]float64 {
+	for i, gi := range c.f.rest {
+		if gi == g {
+			return c.cols[c.f.pos[i] : c.f.pos[i]+c.f.g.groups[g].Columns()]
+		}
+	}
+	return nil
+}
+
+// Of returns the coordinates of Xb.
+func (c *Coordinates) Of(b Vec) []float64 {
+	v := make([]float64, c.dim)
+	for i, gi := range c.f.rest {
+		at := c.f.g.Offset(gi)
+		for k := range c.f.g.groups[gi].Columns() {
+			if x := b.at(at + k).Float64(); x != 0 {
+				axpy(x, c.cols[c.f.pos[i]+k], v)
+			}
+		}
+	}
+	return v
+}
+
+// Scale returns the largest squared length of a column of the groups.
+func (c *Coordinates) Scale(groups []int) float64 {
+	s := 0.0
+	for _, g := range groups {
+		for _, z := range c.group(g) {
+			s = math.Max(s, inner(z, z))
+		}
+	}
+	return s
+}
+
+// Subspace is an orthonormal basis in the coordinates of a joint factor.
+type Subspace struct{ basis [][]float64 }
+
+// Dim returns the dimension.
+func (s *Subspace) Dim() int { return len(s.basis) }
+
+func inner(a, b []float64) float64 {
+	var s float64
+	for i, x := range a {
+		s += x * b[i]
+	}
+	return s
+}
+
+func axpy(a float64, x, y []float64) {
+	for i, v := range x {
+		y[i] += a * v
+	}
+}
+
+// add takes v off the basis, twice, and appends what is left if it is more than tol of v.
+func (s *Subspace) add(v []float64, tol float64) {
+	norm := math.Sqrt(inner(v, v))
+	if norm == 0 {
+		return
+	}
+	w := append([]float64(nil), v...)
+	for range 2 {
+		for _, q := range s.basis {
+			axpy(-inner(q, w), q, w)
+		}
+	}
+	left := math.Sqrt(inner(w, w))
+	if left <= tol*norm {
+		return
+	}
+	for i := range w {
+		w[i] /= left
+	}
+	s.basis = append(s.basis, w)
+}
+
+// minTol is what plain double precision can tell from nil.
+const minTol = 1e-11
+
+// Span returns the space of the groups' columns.
+func (c *Coordinates) Span(groups []int, tol float64) *Subspace {
+	s := &Subspace{}
+	for _, g := range groups {
+		for _, v := range c.group(g) {
+			s.add(v, math.Max(tol, minTol))
+		}
+	}
+	return s
+}
+
+// Whole returns the space of all columns.
+func (c *Coordinates) Whole() *Subspace {
+	s := &Subspace{}
+	for t := range c.dim {
+		e := make([]float64, c.dim)
+		e[t] = 1
+		s.basis = append(s.basis, e)
+	}
+	return s
+}
+
+// Minus returns the part of s orthogonal to t, which must lie inside s.
+func (s *Subspace) Minus(t *Subspace) *Subspace {
+	all := &Subspace{basis: append([][]float64(nil), t.basis...)}
+	for _, v := range s.basis {
+		all.add(v, 1e-7)
+	}
+	return &Subspace{basis: all.basis[len(t.basis):]}
+}
+
+// Without returns the part of s orthogonal to a vector of s.
+func (s *Subspace) Without(v []float64) *Subspace {
+	one := &Subspace{}
+	one.add(v, 0)
+	return s.Minus(one)
+}
+
+// Overlap returns the largest inner product of basis vectors: 0 for orthogonal spaces.
+func (s *Subspace) Overlap(t *Subspace) float64 {
+	m := 0.0
+	for _, a := range s.basis {
+		for _, b := range t.basis {
+			m = math.Max(m, math.Abs(inner(a, b)))
+		}
+	}
+	return m
+}
+
+// images returns Zᵀq for each basis vector q.
+func (s *Subspace) images(c *Coordinates, groups []int) [][]float64 {
+	var zs [][]float64
+	for _, g := range groups {
+		zs = append(zs, c.group(g)...)
+	}
+	out := make([][]float64, len(s.basis))
+	for i, q := range s.basis {
+		out[i] = make([]float64, len(zs))
+		for k, z := range zs {
+			out[i][k] = inner(z, q)
+		}
+	}
+	return out
+}
+
+// Spread returns the constant c nearest to QᵀZZᵀQ = cI and the largest departure from it.
+func (s *Subspace) Spread(co *Coordinates, groups []int) (c, residual float64) {
+	im := s.images(co, groups)
+	if len(im) == 0 {
+		return 0, 0
+	}
+	for _, v := range im {
+		c += inner(v, v) / float64(len(im))
+	}
+	for i, v := range im {
+		for k, w := range im[:i+1] {
+			x := inner(v, w)
+			if i == k {
+				x -= c
+			}
+			residual = math.Max(residual, math.Abs(x))
+		}
+	}
+	return c, residual
+}
+
+// Size returns the largest element of QᵀZZᵀQ.
+func (s *Subspace) Size(co *Coordinates, groups []int) float64 {
+	m := 0.0
+	for _, v := range s.images(co, groups) {
+		m = math.Max(m, inner(v, v))
+	}
+	return m
+}
+
+// Cross returns the largest element of QᵀZZᵀU.
+func (s *Subspace) Cross(t *Subspace, co *Coordinates, groups []int) float64 {
+	a, b := s.images(co, groups), t.images(co, groups)
+	m := 0.0
+	for _, v := range a {
+		for _, w := range b {
+			m = math.Max(m, math.Abs(inner(v, w)))
+		}
+	}
+	return m
+}
