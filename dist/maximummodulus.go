@@ -138,7 +138,8 @@ func (d MaximumModulus) Mean() float64 {
 	return l.mean()
 }
 
-// Variance returns the variance, +Inf for Nu <= 2.
+// Variance returns the variance: +Inf for 1 < Nu <= 2, NaN where the mean is
+// infinite.
 func (d MaximumModulus) Variance() float64 {
 	if !d.valid() {
 		return math.NaN()

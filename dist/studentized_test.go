@@ -165,6 +165,10 @@ func dfOf(t *testing.T, name string) float64 {
 }
 
 func percentagePoints(t *testing.T, file string) map[string]points {
+	return percentageLists(t, file, 4)
+}
+
+func percentageLists(t *testing.T, file string, lists int) map[string]points {
 	raw, err := os.ReadFile("testdata/" + file)
 	if err != nil {
 		t.Fatal(err)
@@ -188,7 +192,7 @@ func percentagePoints(t *testing.T, file string) map[string]points {
 		}
 		out[name] = p
 	}
-	if len(out) < 4 {
+	if len(out) < lists {
 		t.Fatalf("%s: %d lists", file, len(out))
 	}
 	return out

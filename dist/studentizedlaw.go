@@ -261,7 +261,10 @@ func (l *studentizedLaw) mean() float64 {
 
 func (l *studentizedLaw) variance() float64 {
 	nu := l.s.nu
-	if !(nu > 2) {
+	switch {
+	case nu <= 1:
+		return math.NaN()
+	case nu <= 2:
 		return math.Inf(1)
 	}
 	m1, m2 := l.u.moments()

@@ -151,7 +151,8 @@ func (d StudentizedRange) Mean() float64 {
 	return l.mean()
 }
 
-// Variance returns the variance, +Inf for Nu <= 2.
+// Variance returns the variance: +Inf for 1 < Nu <= 2, NaN where the mean is
+// infinite.
 func (d StudentizedRange) Variance() float64 {
 	if !d.valid() {
 		return math.NaN()
