@@ -14,6 +14,9 @@ import (
 // 40 sqrt(a) 2^-66 < 2^-56.
 const quickMax = 1000
 
+// fractionMax bounds the levels of a continued fraction.
+const fractionMax = 128
+
 // acc is a compensated sum hi + lo.
 type acc struct{ hi, lo float64 }
 
@@ -118,10 +121,10 @@ func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
 
 // quickGammaTail is GammaTail on the quick path:
 //
-//	x <= a            lower: series, its first terms in double-double
-//	a < x < 2         upper: complement of the series, more terms in double-double
+//	x <= (a+1)/4      lower: series, its first terms in double-double
+//	x <= a            lower: continued fraction, the limit of the beta law's (DLMF 8.9.1, even part)
+//	a < x < 2.5       upper: complement of the series, more terms in double-double
 //	x > a             upper: continued fraction (DLMF 8.9.2, even part)
-//	else, slow to converge: Mills ratio
 func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	if !(a >= 1e-3 && a <= quickMax && x.Hi > 1e-280 && x.Hi < 1e6) {
 		return Scaled{}, false, false
@@ -133,11 +136,13 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	}
 	x0 := x.Hi
 	if x0 <= a {
-		if a < 24 || x0 < 0.7*a {
-			f.M = divPair(mulPair(f.M, gammaQuickSeries(a, x, 5)), dd.DD{Hi: a})
-		} else {
-			f.M = f.M.MulF(gammaMills((a-x0)-x.Lo, x0, false))
+		if x0 > 0.25*(a+1) {
+			if w, ok := gammaLowerFraction(a, x); ok {
+				f.M = divPair(f.M, w)
+				return f, false, true
+			}
 		}
+		f.M = divPair(mulPair(f.M, gammaQuickSeries(a, x, 5)), dd.DD{Hi: a})
 		return f, false, true
 	}
 	if x0 < 2.5 {
@@ -147,10 +152,6 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 		}
 		s := 1 - p.Hi
 		return Scaled{M: dd.DD{Hi: s, Lo: ((1 - s) - p.Hi) - p.Lo}}, true, true
-	}
-	if d := x0 - a; a > 16 && d*d < 3*a {
-		f.M = f.M.MulF(gammaMills(d+x.Lo, x0, true))
-		return f, true, true
 	}
 	w, ok := gammaFraction(a, x)
 	if !ok {
@@ -186,7 +187,7 @@ func gammaQuickSeries(a float64, x dd.DD, m int) dd.DD {
 //
 //	w = x+1-a - 1(1-a)/(x+3-a - 2(2-a)/(x+5-a - ...))
 //
-// The inner levels are run forward until two convergents agree, at most 80 levels; the
+// The inner levels are run forward until two convergents agree, at most fractionMax levels; the
 // outer one is in double-double, which damps their rounding errors.
 func gammaFraction(a float64, x dd.DD) (w dd.DD, ok bool) {
 	b0, e := dd.TwoSum(x.Hi, -a)
@@ -196,7 +197,7 @@ func gammaFraction(a float64, x dd.DD) (w dd.DD, ok bool) {
 	q0, q1 := 0.0, 1.0
 	last := 0.0
 	v := p1
-	for k := 2.0; k < 82; k += 4 {
+	for k := 2.0; k < 2+fractionMax; k += 4 {
 		for j := range 4 {
 			n := k + float64(j)
 			b, g := c+(2*n+1), n*(n-a)
@@ -209,9 +210,57 @@ func gammaFraction(a float64, x dd.DD) (w dd.DD, ok bool) {
 			break
 		}
 		last = v
+		if p1 > 0x1p400 {
+			p0, p1, q0, q1 = p0*0x1p-400, p1*0x1p-400, q0*0x1p-400, q1*0x1p-400
+		}
 	}
 	r := (1 - a) / v
 	h, l := dd.TwoSum(b0, 1)
 	h, l2 := dd.TwoSum(h, -r)
 	return dd.DD{Hi: h, Lo: l + l2 + e + x.Lo}, ok
+}
+
+// gammaLowerFraction returns the w with γ(a, x) = x^a e^-x / w for x <= a: the fraction of
+// Didonato and Morris (see betaFraction) for b -> +Inf at x/b, w = β0 + α1/(β1 + ...),
+//
+//	α_m = (a+m-1) m x² / (a+2m-1)²
+//	β_m = m + m x/(a+2m-1) + (a+m) (a-x+1+2m)/(a+2m+1).
+func gammaLowerFraction(a float64, x dd.DD) (w dd.DD, ok bool) {
+	x0 := x.Hi
+	c, ce := dd.TwoSum(a, -x0)
+	ce -= x.Lo
+	c1 := c + ce + 1
+	d := x0 / (a + 1)
+	r := 1 / (a + 3)
+	a1 := a * d * d
+	p0, p1 := 1.0, 1+d+(a+1)*(c1+2)*r
+	q0, q1 := 0.0, 1.0
+	v := p1
+	last := 0.0
+	for k := 2.0; k < 2+fractionMax; k += 4 {
+		for j := range 4 {
+			m := k + float64(j)
+			d = x0 * r
+			r = 1 / (a + (2*m + 1))
+			al := (a + (m - 1)) * m * d * d
+			be := m + m*d + (a+m)*(c1+2*m)*r
+			p0, p1 = p1, be*p1+al*p0
+			q0, q1 = q1, be*q1+al*q0
+		}
+		v = p1 / q1
+		if math.Abs(v-last) <= 0x1p-50*math.Abs(v) {
+			ok = true
+			break
+		}
+		last = v
+		if p1 > 0x1p400 {
+			p0, p1, q0, q1 = p0*0x1p-400, p1*0x1p-400, q0*0x1p-400, q1*0x1p-400
+		}
+	}
+	h, l := dd.TwoSum(c, 1)
+	num := mulPair(dd.DD{Hi: h, Lo: l + ce}, dd.DD{Hi: a})
+	h, l = dd.TwoSum(a, 1)
+	b0 := divPair(num, dd.DD{Hi: h, Lo: l})
+	h, l = dd.TwoSum(b0.Hi, a1/v)
+	return dd.DD{Hi: h, Lo: l + b0.Lo}, ok
 }

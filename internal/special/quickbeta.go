@@ -84,8 +84,8 @@ func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
 //
 //	quotient of terms below 0.5, or x < 0.35, a < 8   series, its first terms in double-double
 //	x > 0.9, y (a+b) < 3                             complement of the series in y, more terms in double-double
-//	x <= 0.97                                        continued fraction of Didonato and Morris (1992)
-//	slow to converge, a >= 16                        Mills ratio
+//	otherwise                                        continued fraction of Didonato and Morris (1992); left
+//	                                                 to the full path where it is slow (x near 1)
 func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 	if !(min(a, b) >= 1e-3 && max(a, b) <= quickMax && min(x.Hi, y.Hi) > 1e-280) {
 		return Scaled{}, false, false
@@ -115,17 +115,9 @@ func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 		v := 1 - p.Hi
 		return Scaled{M: dd.DD{Hi: v, Lo: ((1 - v) - p.Hi) - p.Lo}}, upper, true
 	}
-	if a < 40 || c.hi*c.hi > 12*s.Hi*x.Hi*y.Hi {
-		if w, ok := betaFraction(a, b, s.Hi, c, x); ok {
-			f.M = divPair(f.M, w)
-			return f, upper, true
-		}
-	}
-	if a < 16 || x.Hi > 0.6 && y.Hi*s.Hi < 8 {
-		return Scaled{}, false, false
-	}
-	f.M = f.M.MulF(betaMills(c.hi+c.lo, s.Hi, x.Hi, y.Hi))
-	return f, upper, true
+	w, ok := betaFraction(a, b, s.Hi, c, x)
+	f.M = divPair(f.M, w)
+	return f, upper, ok
 }
 
 // betaQuickSeries returns Σ (s)_n/((a+1) ... (a+n)) x^n: the first m levels of the nested form in
@@ -156,7 +148,7 @@ func betaQuickSeries(a float64, s, x dd.DD, m int) dd.DD {
 //	α_m = (a+m-1)(a+b+m-1) m (b-m) x² / (a+2m-1)²
 //	β_m = m + m (b-m) x/(a+2m-1) + (a+m) (c + 1 + m (2-x))/(a+2m+1)
 //
-// The inner levels are run forward until two convergents agree, at most 64; the outer one
+// The inner levels are run forward until two convergents agree, at most fractionMax; the outer one
 // is in double-double.
 func betaFraction(a, b, s float64, c acc, x dd.DD) (w dd.DD, ok bool) {
 	x0 := x.Hi
@@ -169,7 +161,7 @@ func betaFraction(a, b, s float64, c acc, x dd.DD) (w dd.DD, ok bool) {
 	q0, q1 := 0.0, 1.0
 	v := p1
 	last := 0.0
-	for k := 2.0; k < 66; k += 4 {
+	for k := 2.0; k < 2+fractionMax; k += 4 {
 		for j := range 4 {
 			m := k + float64(j)
 			d = e
@@ -187,6 +179,9 @@ func betaFraction(a, b, s float64, c acc, x dd.DD) (w dd.DD, ok bool) {
 			break
 		}
 		last = v
+		if p1 > 0x1p400 {
+			p0, p1, q0, q1 = p0*0x1p-400, p1*0x1p-400, q0*0x1p-400, q1*0x1p-400
+		}
 	}
 	// β0 = a (c+1)/(a+1)
 	h, l := dd.TwoSum(c.hi, 1)
