@@ -52,7 +52,7 @@ func (s StudentT) outer(t float64) special.Scaled {
 	default:
 		q := dd.Prod(t, t)
 		d := q.AddF(s.Nu)
-		u, upper = special.BetaTail(dd.From(0.5), half(s.Nu), q.Div(d), dd.From(s.Nu).Div(d))
+		u, upper = special.BetaTail(dd.From(0.5), half(s.Nu), q.DivQuick(d), dd.From(s.Nu).DivQuick(d))
 	}
 	if !upper {
 		u = special.Scaled{M: u.DD().Neg().AddF(1)}
@@ -61,8 +61,8 @@ func (s StudentT) outer(t float64) special.Scaled {
 	return u
 }
 
-// density returns the density at a finite t.
-func (s StudentT) density(t float64) special.Scaled {
+// density returns the density at a finite t; quick answers are not fit for logarithms near 0.
+func (s StudentT) density(t float64, quick bool) special.Scaled {
 	t = math.Abs(t)
 	switch {
 	case math.IsInf(s.Nu, 1):
@@ -80,8 +80,13 @@ func (s StudentT) density(t float64) special.Scaled {
 	// Y^(Nu/2) / (B(1/2, Nu/2) sqrt(Nu + t²)).
 	q := dd.Prod(t, t)
 	d := q.AddF(s.Nu)
+	x := q.DivQuick(d)
+	if quick && t > 1e-10 {
+		// The density of log T² over t.
+		k := special.BetaKernelQuick(dd.From(0.5), half(s.Nu), x, dd.From(s.Nu).DivQuick(d))
+		return perX(k, t)
+	}
 	c := special.InverseBeta(dd.From(0.5), half(s.Nu))
-	x := q.Div(d)
 	if x.Hi < 0.25 {
 		c.L = c.L.Add(half(s.Nu).Mul(dd.Log1p(x.Neg())))
 	} else {
@@ -133,7 +138,7 @@ func (s StudentT) Prob(t float64) float64 {
 	if v, done := realEnds(t, s.valid(), 0, 0); done {
 		return v
 	}
-	return s.density(t).Float64()
+	return s.density(t, true).Float64()
 }
 
 // LogProb returns the logarithm of the density.
@@ -141,11 +146,11 @@ func (s StudentT) LogProb(t float64) float64 {
 	if v, done := realEnds(t, s.valid(), math.Inf(-1), math.Inf(-1)); done {
 		return v
 	}
-	return s.density(t).Log()
+	return s.density(t, false).Log()
 }
 
 func (s StudentT) tailAt(t float64, upper bool) (tail, logTail, hazard float64) {
-	return s.tail(t).eval(upper, s.density(t))
+	return s.tail(t).eval(upper, s.density(t, true))
 }
 
 func (s StudentT) support() (lo, hi float64) { return math.Inf(-1), math.Inf(1) }

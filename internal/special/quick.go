@@ -121,6 +121,7 @@ func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
 
 // quickGammaTail is GammaTail on the quick path:
 //
+//	2a <= 28 whole, x > 0.6a  upper: finite sum
 //	x <= (a+1)/4      lower: series, its first terms in double-double
 //	x <= a            lower: continued fraction, the limit of the beta law's (DLMF 8.9.1, even part)
 //	a < x < 2.5       upper: complement of the series, more terms in double-double
@@ -129,12 +130,15 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	if !(a >= 1e-3 && a <= quickMax && x.Hi > 1e-280 && x.Hi < 1e6) {
 		return Scaled{}, false, false
 	}
+	x0 := x.Hi
+	if k := 2 * a; k <= finiteGammaMax && k == math.Floor(k) && x0 > 0.6*a && x0 < 650 {
+		return gammaFinite(int(k), x), true, true
+	}
 	l, m := gammaQuickKernel(a, x)
 	f, ok := quickScaled(l, m)
 	if !ok {
 		return Scaled{}, false, false
 	}
-	x0 := x.Hi
 	if x0 <= a {
 		if x0 > 0.25*(a+1) {
 			if w, ok := gammaLowerFraction(a, x); ok {
@@ -142,7 +146,7 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 				return f, false, true
 			}
 		}
-		f.M = divPair(mulPair(f.M, gammaQuickSeries(a, x, 5)), dd.DD{Hi: a})
+		f.M = divPair(mulPair(f.M, gammaQuickSeries(a, x, pairLevels(x0/(a+1)))), dd.DD{Hi: a})
 		return f, false, true
 	}
 	if x0 < 2.5 {
@@ -263,4 +267,18 @@ func gammaLowerFraction(a float64, x dd.DD) (w dd.DD, ok bool) {
 	b0 := divPair(num, dd.DD{Hi: h, Lo: l})
 	h, l = dd.TwoSum(b0.Hi, a1/v)
 	return dd.DD{Hi: h, Lo: l + b0.Lo}, ok
+}
+
+// pairLevels returns how many levels of a nested series with quotient r need double-double, so that
+// the rounding errors of the rest count for less than a tenth.
+func pairLevels(r float64) int {
+	switch {
+	case r < 0.03:
+		return 1
+	case r < 0.2:
+		return 2
+	case r < 0.4:
+		return 3
+	}
+	return 5
 }

@@ -98,13 +98,18 @@ func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 		c.hi, c.lo = -c.hi, -c.lo
 	}
 	s := dd.Sum(a, b)
+	r := x.Hi * max(1, s.Hi/(a+1))
+	if r > 0.25 {
+		if t, ok := finiteBetaTail(a, b, x, y); ok {
+			return t, upper, true
+		}
+	}
 	f, ok := quickBetaKernel(a, b, x, y)
 	if !ok {
 		return f, false, false
 	}
-	r := x.Hi * max(1, s.Hi/(a+1))
 	if r < 0.5 || x.Hi < 0.35 && a < 8 {
-		f.M = divPair(mulPair(f.M, betaQuickSeries(a, s, x, 5)), dd.DD{Hi: a})
+		f.M = divPair(mulPair(f.M, betaQuickSeries(a, s, x, pairLevels(r))), dd.DD{Hi: a})
 		return f, upper, true
 	}
 	if x.Hi > 0.9 && y.Hi*s.Hi < 3 {
@@ -118,6 +123,32 @@ func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 	w, ok := betaFraction(a, b, s.Hi, c, x)
 	f.M = divPair(f.M, w)
 	return f, upper, ok
+}
+
+// finiteBetaTail returns I_x(a, b) by a finite sum where one of a, b is whole and
+// small, the other a multiple of 1/2:
+//
+//	b whole   directly
+//	a whole   1 - I_y(b, a), down to 1e-10, which leaves 2^-60
+func finiteBetaTail(a, b float64, x, y dd.DD) (Scaled, bool) {
+	a2, b2 := 2*a, 2*b
+	if a2 != math.Floor(a2) || b2 != math.Floor(b2) || a2 > 200 || b2 > 200 {
+		return Scaled{}, false
+	}
+	if b <= finiteBetaMax && b == math.Floor(b) {
+		if p := betaFinite(a, int(b), x, y); p.Hi > 1e-250 {
+			return Scaled{M: p}, true
+		}
+		return Scaled{}, false
+	}
+	if a <= finiteBetaMax && a == math.Floor(a) {
+		p := betaFinite(b, int(a), y, x)
+		if v := 1 - p.Hi; v > 1e-10 {
+			h, l := dd.QuickTwoSum(v, ((1-v)-p.Hi)-p.Lo)
+			return Scaled{M: dd.DD{Hi: h, Lo: l}}, true
+		}
+	}
+	return Scaled{}, false
 }
 
 // betaQuickSeries returns Σ (s)_n/((a+1) ... (a+n)) x^n: the first m levels of the nested form in
