@@ -2,6 +2,7 @@ package lrt
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 )
@@ -37,13 +38,16 @@ func fitSeparately(ctx context.Context, c Comparison) (Pair, error) {
 	}
 	p.Warnings = lostInterfaces(c)
 	if n, ok := c.Restricted.(Nester); ok {
-		if err := n.NestedIn(c.Full); err != nil {
+		switch err := n.NestedIn(c.Full); {
+		case err == nil:
+			p.Nesting = "proved by the restricted space"
+		case errors.Is(err, ErrNestingUnknown):
+			p.Warnings = append(p.Warnings, notChecked(err))
+		default:
 			return p, &ComparisonError{c.Name, "restricted", err}
 		}
-		p.Nesting = "proved by the restricted space"
 	} else {
-		p.Warnings = append(p.Warnings, Warning{"nesting-not-checked",
-			"neither space can show that the restricted one lies inside the full one: the caller vouches for it"})
+		p.Warnings = append(p.Warnings, notChecked(nil))
 	}
 	var err error
 	if p.Restricted, err = c.Restricted.Maximize(ctx); err != nil {

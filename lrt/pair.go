@@ -19,6 +19,10 @@ type Pair struct {
 	// with a warning.
 	Nesting string
 
+	// Irregular says why −2 log λ has no χ² law here; "" when nothing speaks
+	// against one.
+	Irregular string
+
 	Linear      Linear
 	Certificate *Certificate
 	Warnings    []Warning

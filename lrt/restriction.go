@@ -28,10 +28,12 @@ type Param struct {
 	Lower, Upper float64
 }
 
-// Map expresses the parameters theta of a space by fewer parameters phi.
+// Map expresses the parameters theta of a space by fewer parameters phi. To
+// must fill all of theta and keep the equations that hold there already.
 type Map struct {
 	Params []Param
 	To     func(phi, theta []float64)
+	Start  []float64 // rough values of phi; nil: searched
 }
 
 // Fix holds one parameter at a value.

@@ -75,6 +75,8 @@ type Fit struct {
 	Criterion Criterion
 	// Warnings are what a reader of the fit should know.
 	Warnings []Warning
+
+	detail *detail // of a declared space
 }
 
 // AIC returns −2 log L + 2 Dim (Akaike 1974).

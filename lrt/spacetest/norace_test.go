@@ -1,0 +1,5 @@
+//go:build !race
+
+package spacetest
+
+const raceEnabled = false
