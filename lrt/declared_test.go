@@ -174,7 +174,10 @@ func TestBadModels(t *testing.T) {
 				return 0
 			}
 		}), ErrPanic, "boom"},
-		{"panic in Each", with(func(m *Model[grouped]) { m.LogLikelihood = nil; m.Each = func(grouped, []float64, []float64) { boom() } }), ErrPanic, "Each at mean[1] = "},
+		{"panic in Each", with(func(m *Model[grouped]) {
+			m.LogLikelihood = nil
+			m.Each = func(grouped, []float64, []float64) { boom() }
+		}), ErrPanic, "Each at mean[1] = "},
 		{"panic in Gradient", with(func(m *Model[grouped]) { m.Gradient = func(grouped, []float64, []float64) { boom() } }), ErrPanic, "Gradient at"},
 		{"panic in Start", with(func(m *Model[grouped]) { m.Start = func(grouped) []float64 { boom(); return nil } }), ErrPanic, "Start"},
 		{"panic in ClosedForm", with(func(m *Model[grouped]) {

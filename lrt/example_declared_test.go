@@ -62,7 +62,7 @@ func ExampleBind() {
 	}
 	// Output:
 	// weibull: shape[1] = shape[2]
-	// −2 log λ = 0.9753, χ²(1), p = 0.3234
+	// −2 log λ = 0.9753, ChiSquared(1), p = 0.3234
 	// shape[1] 1.355 ± 0.333
 	// shape[2] 1.975 ± 0.560
 	// scale[1] 124.738 ± 30.726
@@ -137,7 +137,7 @@ func ExampleSpace() {
 	fmt.Println(errors.Is(err, lrt.ErrNotNested))
 	// Output:
 	// log λ = -2.31604, λ = 0.0986633, −2 log λ = 4.63208
-	// asymptotic: −2 log λ referred to χ²(1), p = 0.03138
+	// asymptotic: −2 log λ referred to ChiSquared(1), p = 0.03138
 	// exact: ratio of means = 0.359338 referred to F(20, 16), p = 0.03378
 	// read the exact test: the ratio of two exponential means has an F law whatever the sample sizes
 	// true

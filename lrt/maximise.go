@@ -43,14 +43,6 @@ type search struct {
 	useBounds bool
 }
 
-func (s *search) names(ks []int) string {
-	var names []string
-	for _, k := range ks {
-		names = append(names, s.f.params[k].Name)
-	}
-	return strings.Join(names, ", ")
-}
-
 // over maximises over the frame with the equations eq from the given starts,
 // in parameters of the frame. The best peak wins, the earlier at a tie.
 func (s *search) over(eq echelon, starts [][]float64, hs []held, depth int) (*peak, error) {
