@@ -332,10 +332,15 @@ func (f *filler) chooseBasis() {
 		if fixed[c] {
 			continue
 		}
+		x := f.block.Hi[c][:n]
 		if j.shifted {
-			j.shift[c] = provisional(f.block.Hi[c][:n])
+			// Far from zero x − shift is exact (Sterbenz 1974) and saves digits. Near
+			// zero there are none to save, and x itself has no low part.
+			if m := provisional(x); math.Abs(m) > 16*math.Ldexp(1, spread(x, m)) {
+				j.shift[c] = m
+			}
 		}
-		j.exp[c] = spread(f.block.Hi[c][:n], j.shift[c])
+		j.exp[c] = spread(x, j.shift[c])
 	}
 }
 
@@ -360,7 +365,9 @@ func provisional(x []float64) float64 {
 func spread(x []float64, centre float64) int {
 	m := 0.0
 	for _, v := range x {
-		m = math.Max(m, math.Abs(v/2-centre/2))
+		if d := math.Abs(v/2 - centre/2); d > m {
+			m = d
+		}
 	}
 	if m == 0 {
 		return 0
