@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"subsume.example/dist"
 	"subsume.example/internal/dd"
@@ -61,6 +62,7 @@ type Fit struct {
 	j       *joint
 	v       *view
 	f       *linalg.Factor
+	order   *termOrder // where the factorization did not follow the terms
 	reading *reading
 }
 
@@ -163,6 +165,9 @@ func (f *Fit) summarize() error {
 	}
 	f.Aliased = j.aliases(v, f.f)
 	f.reading = newReading(f, onBasis)
+	if f.f.Eliminated() {
+		f.followTerms()
+	}
 	for t, b := range f.Model.cols {
 		for i := range b.Names {
 			f.Coefficients = append(f.Coefficients, f.coefficient(t, b.shown(i)))
@@ -277,17 +282,69 @@ func (r *reading) estimate(ws []weight, se bool) (Estimate, float64, int) {
 	return e, bad, worst
 }
 
+// followTerms makes the coefficients those of the order of the terms.
+func (f *Fit) followTerms() {
+	o, ok := f.j.orderTerms(f.Model, f.f, f.j.gram.NewVec())
+	if !ok {
+		f.Warnings = append(f.Warnings, lrt.Warning{Code: "largest-factor-first", Text: "with this many columns the levels of the largest factor are kept and columns of the other terms set aside"})
+		return
+	}
+	if f.order = o; o == nil {
+		return
+	}
+	kept := f.Aliased[:0:0]
+	for _, a := range f.Aliased {
+		if a.Empty {
+			kept = append(kept, a)
+		}
+	}
+	f.Aliased = kept
+	for _, at := range o.last {
+		b, c := f.columnAt(at)
+		f.Aliased = append(f.Aliased, Alias{Term: b.name, Column: b.Names[c], Structural: b.structural(c)})
+	}
+}
+
+// columnAt returns the column at a place of a Vec.
+func (f *Fit) columnAt(at int) (*bound, int) {
+	for g, b := range f.j.cols {
+		if o := f.j.gram.Offset(g); at >= o && at < o+len(b.Names) {
+			return b, at - o
+		}
+	}
+	return nil, 0
+}
+
+// aside reports whether the coefficient of a column is zero by the order of the terms.
+func (f *Fit) aside(g, column int) bool {
+	at := f.j.gram.Offset(g) + column
+	for _, a := range f.f.Aside {
+		if a.Group == g && a.Column == column && (f.order == nil || a.Empty) {
+			return true
+		}
+	}
+	return f.order != nil && slices.Contains(f.order.last, at)
+}
+
 func (f *Fit) coefficient(term, column int) Coefficient {
 	b := f.Model.cols[term]
 	c := Coefficient{Term: b.name, Name: b.Names[column], SE: math.NaN(), T: math.NaN(), P: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
 	g := f.j.group(f.j.cols[term])
-	for _, a := range f.f.Aside {
-		if a.Group == g && a.Column == column {
-			c.Aliased = true
-			return c
+	if f.aside(g, column) {
+		c.Aliased = true
+		return c
+	}
+	ws := []weight{{term, column, dd.From(1)}}
+	if f.order != nil {
+		at := f.j.gram.Offset(g) + column
+		for i, v := range f.order.null {
+			if x := v.At(at); x.Hi != 0 {
+				b, col := f.columnAt(f.order.last[i])
+				ws = append(ws, weight{f.Model.find(b), col, x.Neg()})
+			}
 		}
 	}
-	e, _, _ := f.reading.estimate([]weight{{term, column, dd.From(1)}}, f.Model.columns() <= maxReported)
+	e, _, _ := f.reading.estimate(ws, f.Model.columns() <= maxReported)
 	c.Estimate, c.SE, c.T, c.P, c.Lower, c.Upper = e.Value, e.SE, e.T, e.P, e.Lower, e.Upper
 	return c
 }

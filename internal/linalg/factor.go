@@ -380,3 +380,6 @@ func (f *Factor) Clean() *Gram {
 	}
 	return &g
 }
+
+// Eliminated reports whether a group went first as a diagonal.
+func (f *Factor) Eliminated() bool { return f.elim >= 0 }

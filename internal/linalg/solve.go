@@ -400,3 +400,46 @@ func (g *Gram) Total(group int) (n dd.DD, rhs []dd.DD) {
 	}
 	return n, rhs
 }
+
+// Null returns one vector for each column set aside that is not empty: 1 there,
+// minus the coefficients that write it in the kept columns, so that Xv = 0.
+func (f *Factor) Null() []Vec {
+	var out []Vec
+	for _, a := range f.Aside {
+		if a.Empty {
+			continue
+		}
+		k := f.place(a.Group, a.Column)
+		h := Half{rest: newVec(len(f.piv))}
+		for t, p := range f.piv {
+			if p > k {
+				break
+			}
+			h.rest.set(t, f.r[k].at(t).Neg())
+		}
+		if f.elim >= 0 {
+			h.level, h.c = make([]dd.DD, len(f.d)), make([]dd.DD, len(f.d))
+			for l, row := range f.rows {
+				for _, e := range row {
+					if int(e.col) == k {
+						h.c[l] = e.val.Neg()
+					}
+				}
+			}
+		}
+		v := f.Back(h)
+		v.set(f.g.Offset(a.Group)+a.Column, dd.From(1))
+		out = append(out, v)
+	}
+	return out
+}
+
+// place returns the number of a group's column within the rest.
+func (f *Factor) place(group, column int) int {
+	for i, gi := range f.rest {
+		if gi == group {
+			return f.pos[i] + column
+		}
+	}
+	return -1
+}
