@@ -16,7 +16,13 @@ import (
 //
 // What the circle leaves out (its path from -U to 0) is e^{-2(A+B)} < e^-44 of the
 // integral.
-const chi2Few = 22
+//
+// For x below chi2Tiny the lower tail is its first term, and above 1e40 max(1, k, λ) every
+// logarithm is -x/2 to all digits.
+const (
+	chi2Few  = 22
+	chi2Tiny = 1e-250
+)
 
 // chi2Saddle returns A and B.
 func chi2Saddle(k, lambda, x float64) (a, b float64) {
@@ -30,7 +36,7 @@ func chi2Mixture(k, lambda float64, x dd.DD) mixture {
 	m := mixture{a: k / 2, half: dd.From(lambda / 2)}
 	m.a1 = a.AddF(1)
 	m.y = x.MulF(0.5)
-	if x.Hi < 1e-270 {
+	if x.Hi < chi2Tiny {
 		m.c, _ = special.GammaTailTiny(a, dd.Log(x).Sub(dd.Ln2))
 		m.t0, m.end = m.c, -1
 		return m
@@ -43,6 +49,7 @@ func chi2Mixture(k, lambda float64, x dd.DD) mixture {
 // ChiSquared is noncentral χ² at a point.
 type ChiSquared struct {
 	contour bool
+	far     bool // x so large that only -x/2 counts in every logarithm
 	right   bool // the saddle point lies right of the pole
 	x       float64
 	path    chi2Path
@@ -53,7 +60,11 @@ type ChiSquared struct {
 func AtChiSquared(k, lambda float64, x dd.DD) (p ChiSquared) {
 	a, b := chi2Saddle(k, lambda, x.Hi)
 	p.x = x.Hi
-	if a+b >= chi2Few {
+	if x.Hi > 1e40*max(1, k, lambda) {
+		p.far = true
+		return p
+	}
+	if a+b >= chi2Few && x.Hi >= chi2Tiny {
 		p.contour = true
 		p.path = newChi2Path(k, lambda, x, b)
 		return p
@@ -66,7 +77,10 @@ func AtChiSquared(k, lambda float64, x dd.DD) (p ChiSquared) {
 // Tail returns one tail: the upper one if upper is set, and the smaller one or at
 // least one not near 1.
 func (p *ChiSquared) Tail() (t special.Scaled, upper bool) {
-	if p.contour {
+	switch {
+	case p.far:
+		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}, true
+	case p.contour:
 		return p.path.tail()
 	}
 	return p.mix.smaller(p.right)
@@ -74,7 +88,10 @@ func (p *ChiSquared) Tail() (t special.Scaled, upper bool) {
 
 // Kernel returns the density of log X, x times that of X.
 func (p *ChiSquared) Kernel() special.Scaled {
-	if p.contour {
+	switch {
+	case p.far:
+		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}
+	case p.contour:
 		return p.path.kernel(p.x)
 	}
 	return p.mix.kernel()
@@ -82,7 +99,10 @@ func (p *ChiSquared) Kernel() special.Scaled {
 
 // Slope returns the derivative of the upper tail in λ, the density for k+2 at x.
 func (p *ChiSquared) Slope() special.Scaled {
-	if p.contour {
+	switch {
+	case p.far:
+		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}
+	case p.contour:
 		return p.path.slope()
 	}
 	return p.mix.slope()

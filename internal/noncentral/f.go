@@ -18,7 +18,8 @@ import (
 const fFew = 42
 
 // fArg is the argument of a noncentral F tail: c = D1 x/D2 and 1+c, with
-// logarithms that hold where c itself leaves the range of float64.
+// logarithms that hold where c itself leaves the range of float64; beyond 2^±400
+// one of c and 1 is lost beside the other.
 type fArg struct {
 	c, c1       dd.DD // c and 1+c; c is scaled by 2^-shift, c1 true
 	shift       int
@@ -35,14 +36,14 @@ func newFArg(d1, d2 float64, x dd.DD, ex int) fArg {
 	m := dd.DD{Hi: fx, Lo: fl}.MulF(f1).DivF(f2)
 	e := ex + e1 - e2
 	g := fArg{c: m, shift: e}
-	if e > -900 && e < 900 {
+	if e > -400 && e < 400 {
 		g.c, g.shift = m.Scale(e), 0
 	}
 	g.logC = dd.Log(m).Add(dd.Ln2.MulF(float64(e)))
 	switch {
-	case e < -900:
+	case e <= -400:
 		g.c1 = dd.From(1)
-	case e > 900:
+	case e >= 400:
 		g.c1, g.logC1 = dd.From(math.Inf(1)), g.logC
 	default:
 		g.c1 = g.c.AddF(1)
@@ -55,7 +56,7 @@ func newFArg(d1, d2 float64, x dd.DD, ex int) fArg {
 	return g
 }
 
-// y returns c/(1+c) as float64 (0 where it underflows).
+// y returns c/(1+c), 0 where it underflows.
 func (g *fArg) y() dd.DD {
 	switch {
 	case g.shift == 0:
@@ -63,7 +64,7 @@ func (g *fArg) y() dd.DD {
 	case g.shift > 0:
 		return dd.From(1)
 	}
-	return dd.DD{Hi: math.Ldexp(g.c.Hi, g.shift)}
+	return g.c.Scale(g.shift)
 }
 
 // fSaddle returns ρ at the saddle point and A there.

@@ -80,18 +80,25 @@ func (m *mixture) lowerSum() dd.DD {
 
 // upperSum returns Σ w_j Q_j over w_0 T_0 with q0 = Q_0/T_0.
 func upperSum(d *drops, half, q0 dd.DD) dd.DD {
+	// Q_j and T_j carry z^-j, w_j carries z^j, as T_{j+1}/T_j may be huge.
+	z := 1.0
+	if r := d.ratio(0).Hi; r > 1 {
+		_, e := math.Frexp(r)
+		z = math.Ldexp(1, e)
+	}
+	hz := half.MulF(z)
 	w, Q, T, sum := dd.From(1), q0, dd.From(1), dd.DD{}
 	for j := range maxTerms {
 		f := float64(j)
 		sum = sum.Add(w.Mul(Q))
-		w = w.Mul(half).DivF(f + 1)
-		next := Q.Add(T)
-		q := half.Hi / (f + 2) * next.Hi / Q.Hi // at least the ratio of all later terms
+		w = w.Mul(hz).DivF(f + 1)
+		next := Q.Add(T).MulF(1 / z)
+		q := hz.Hi / (f + 2) * next.Hi / Q.Hi // at least the ratio of all later terms
 		if q < 1 && w.Hi*next.Hi < tiny*sum.Hi*(1-q) {
 			break
 		}
 		Q = next
-		T = T.Mul(d.ratio(f))
+		T = T.Mul(d.ratio(f)).MulF(1 / z)
 	}
 	return sum
 }

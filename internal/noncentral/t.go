@@ -106,7 +106,7 @@ func newTTail(nu, t, delta float64) tMix {
 		if math.Abs(g) < 1e-3*math.Sqrt(max(curv, nu)) || math.Abs(g) < 1e-10*nu {
 			break
 		}
-		next := s * math.Exp(g/max(curv, nu*1e-3))
+		next := s * math.Exp(max(-2, min(2, g/max(curv, nu*1e-3))))
 		if !(next > lo && next < hi) {
 			switch {
 			case math.IsInf(hi, 1):
