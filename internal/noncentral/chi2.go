@@ -26,9 +26,9 @@ const (
 
 // chi2Saddle returns A and B.
 func chi2Saddle(k, lambda, x float64) (a, b float64) {
-	r := math.Hypot(k/2, math.Sqrt(lambda)*math.Sqrt(x))
-	b = (k/2 + r) / 2
-	return math.Sqrt(lambda/b) * math.Sqrt(x/b) * (b / 4), b
+	q := math.Sqrt(lambda) * math.Sqrt(x)
+	b = (k/2 + math.Hypot(k/2, q)) / 2
+	return q / b * (q / 4), b
 }
 
 func chi2Mixture(k, lambda float64, x dd.DD) mixture {

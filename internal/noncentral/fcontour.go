@@ -68,7 +68,7 @@ func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64) fPath {
 		}
 	} else {
 		p.n = circleNodes(b, rho, p.bigA)
-		p.eta = math.Abs(l1.Float64() - l2.Float64())
+		p.eta = math.Abs(math.Log1p(p.e))
 	}
 	p.h = 2 * math.Pi / p.n
 	if slope > p.n || g.shift != 0 {

@@ -50,7 +50,7 @@ func (m *mixture) lowerSum() dd.DD {
 	d, half := &m.drops, m.half
 	slow := m.beta && m.y.Hi > 0.5
 	z := 1.0
-	if half.Hi > 1 {
+	if half.Hi > 1 && !slow { // slow: λ/2 is A/U below 90
 		_, e := math.Frexp(half.Hi)
 		z = math.Ldexp(1, e)
 	}
@@ -62,7 +62,7 @@ func (m *mixture) lowerSum() dd.DD {
 		t := T.Mul(W)
 		if slow && w.Hi < tiny/8*W.Hi && half.Hi < (f+1)/2 {
 			// the rest is W Σ T_i
-			return sum.Add(W.MulF(math.Pow(z, f)).Mul(m.lowerRatio(j)))
+			return sum.Add(W.Mul(m.lowerRatio(j)))
 		}
 		sum = sum.Add(t)
 		r := d.ratio(f).MulF(z)

@@ -219,20 +219,20 @@ func (m *tMix) sum(tail bool) special.Scaled {
 	return r
 }
 
-// tClose is the |δ| from which the tails on the side of δ are those of noncentral F(1, ν, δ²)
-// at t²:
+// tClose is the δ from which the upper tail is taken from noncentral F, too:
 //
-//	P(T <= t) = P(F <= t²) + P(T < -t),   P(T > t) = P(F > t²) - P(T < -t),   t, δ > 0.
+//	P(T <= t) = P(F <= t²) + P(T < -t),   P(T > t) = P(F > t²) - P(T < -t),   t, δ > 0,
 //
-// The last term, the tail away from δ, is small beside the upper tail for such δ.
+// F being noncentral F(1, ν, δ²). For smaller δ the difference would cancel, for larger ones
+// the normal tail falls too steeply for the trapezoidal rule.
 const tClose = 2
 
 // TTail returns one tail of noncentral t for finite ν > 0, t, δ: the upper one if upper is
-// set, and the smaller one or at least one not near 1.
+// set, and the smaller one or at least one not near 1. For t > 0 (else both signs are turned):
 //
-//	δ t <= 0           the tail away from δ: sum of normal tails
-//	δ t > 0, |δ| < 2   sum of normal tails
-//	δ t > 0, |δ| >= 2  noncentral F and the tail away from δ
+//	δ <= 0      upper tail: sum of normal tails
+//	0 < δ < 2   upper tail: sum of normal tails; lower: noncentral F and P(T < -t)
+//	δ >= 2      noncentral F and P(T < -t)
 func TTail(nu, t, delta float64) (v special.Scaled, upper bool) {
 	flip := t < 0
 	if flip {
@@ -244,20 +244,16 @@ func TTail(nu, t, delta float64) (v special.Scaled, upper bool) {
 	case delta <= 0:
 		v, upper = tSum(nu, t, delta), true
 	case delta < tClose:
-		upper = t > delta
-		v = tSide(nu, t, delta, upper)
-		if v.L.Hi > -8 && v.Float64() > 0.6 {
-			upper = !upper
-			v = tSide(nu, t, delta, upper)
+		if t > delta {
+			v, upper = tSum(nu, t, delta), true
+			if v.L.Hi > -8 && v.Float64() > 0.6 {
+				v, upper = tLower(nu, t, delta), false
+			}
+		} else if v = tLower(nu, t, delta); v.L.Hi > -8 && v.Float64() > 0.6 {
+			v, upper = tSum(nu, t, delta), true
 		}
 	default:
-		x := dd.Prod(t, t)
-		e := 0
-		if t > 1e150 || t < 1e-130 {
-			f, k := math.Frexp(t)
-			x, e = dd.Prod(f, f), 2*k
-		}
-		p := atF(1, nu, dd.Prod(delta, delta).MulF(0.5), x, e)
+		p := tSquare(nu, t, delta)
 		v, upper = p.Tail()
 		if delta*delta/2 < 45-v.Log() {
 			away := tSum(nu, t, -delta)
@@ -268,6 +264,26 @@ func TTail(nu, t, delta float64) (v special.Scaled, upper bool) {
 		}
 	}
 	return v, upper != flip
+}
+
+// tSquare is the law of T² at t².
+func tSquare(nu, t, delta float64) F {
+	x, e := dd.Prod(t, t), 0
+	if t > 1e150 || t < 1e-130 {
+		f, k := math.Frexp(t)
+		x, e = dd.Prod(f, f), 2*k
+	}
+	return atF(1, nu, dd.Prod(delta, delta).MulF(0.5), x, e)
+}
+
+// tLower returns P(T <= t), t, δ > 0.
+func tLower(nu, t, delta float64) special.Scaled {
+	p := tSquare(nu, t, delta)
+	v, upper := p.Tail()
+	if upper {
+		v = special.Scaled{M: v.DD().Neg().AddF(1)}
+	}
+	return add(v, tSum(nu, t, -delta))
 }
 
 // add returns a + b, a > |b| or b > 0.
@@ -284,13 +300,6 @@ func add(a, b special.Scaled) special.Scaled {
 func tSum(nu, t, delta float64) special.Scaled {
 	m := newTTail(nu, t, delta)
 	return m.sum(true)
-}
-
-func tSide(nu, t, delta float64, upper bool) special.Scaled {
-	if !upper {
-		t, delta = -t, -delta
-	}
-	return tSum(nu, t, delta)
 }
 
 // TDensity returns the density of noncentral t.
