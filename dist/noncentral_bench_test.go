@@ -2,30 +2,10 @@ package dist_test
 
 import (
 	"fmt"
-	"math"
 	"testing"
 
 	"subsume.example/dist"
 )
-
-var sink float64
-
-// BenchmarkYardstick times two functions of package math: figures of other machines are compared by
-// their ratio to these (27 ns and 5.3 ns on the one the targets were set on).
-func BenchmarkYardstick(b *testing.B) {
-	x := 0.1
-	b.Run("erfc", func(b *testing.B) {
-		for b.Loop() {
-			sink = math.Erfc(x)
-		}
-	})
-	y := -3.3
-	b.Run("exp", func(b *testing.B) {
-		for b.Loop() {
-			sink = math.Exp(y)
-		}
-	})
-}
 
 // BenchmarkNoncentral times upper tails, densities and quantiles at the 5 % point, the centre
 // and the far tail.
