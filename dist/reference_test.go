@@ -1,6 +1,7 @@
 package dist_test
 
 import (
+	"strings"
 	"testing"
 
 	"subsume.example/internal/accuracy"
@@ -25,7 +26,11 @@ func TestCentralReference(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	for _, table := range accuracy.Tables[:4] {
+	central := map[string]bool{"chi2": true, "f": true, "t": true, "betainc": true, "chi2_wide": true, "f_wide": true, "t_wide": true}
+	for _, table := range accuracy.Tables {
+		if !central[table.File] {
+			continue
+		}
 		t.Run(table.File, func(t *testing.T) {
 			rows, err := accuracy.Load("testdata", table)
 			if err != nil {
@@ -35,11 +40,11 @@ func TestCentralReference(t *testing.T) {
 			m["quantile"] = accuracy.MeasureInverse(table, inverse)
 			for kind, b := range want {
 				s := accuracy.Summarize(m[kind])
-				if s.N == 0 {
+				if s.N == 0 && (kind != "quantile" || !strings.HasSuffix(table.File, "_wide")) {
 					t.Errorf("%s: no rows", kind)
 				}
 				w := s.Worst
-				if !(s.Median <= b.median && s.MaxEveryday <= b.everyday && s.Max <= b.all) {
+				if s.N > 0 && !(s.Median <= b.median && s.MaxEveryday <= b.everyday && s.Max <= b.all) {
 					t.Errorf("%s: median %.2g, everyday max %.2g, max %.2g, want at most %v; worst: row %d %v x=%v: %s = %v, want %s",
 						kind, s.Median, s.MaxEveryday, s.Max, b, w.Row.Line, w.Row.P, w.Row.X, w.What, w.Got, w.Want)
 				}

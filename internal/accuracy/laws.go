@@ -16,6 +16,9 @@ var Tables = []Table{
 	{File: "betainc", Params: 2, New: func(p []float64) Distribution { return Beta{p[0], p[1]} }, Everyday: func(p []float64) bool {
 		return min(p[0], p[1]) >= 0.25 && max(p[0], p[1]) <= 5e3
 	}},
+	{File: "chi2_wide", Params: 1, New: func(p []float64) Distribution { return dist.ChiSquared{K: p[0]} }, Everyday: everydayDF(1)},
+	{File: "f_wide", Params: 2, New: func(p []float64) Distribution { return dist.F{D1: p[0], D2: p[1]} }, Everyday: everydayDF(2)},
+	{File: "t_wide", Params: 1, New: func(p []float64) Distribution { return dist.StudentT{Nu: p[0]} }, Everyday: everydayDF(1)},
 	{File: "srange", Params: 2, NoDensity: true, New: func(p []float64) Distribution { return dist.StudentizedRange{K: int(p[0]), Nu: p[1]} }, Everyday: everydayScale},
 	{File: "smm", Params: 2, NoDensity: true, New: func(p []float64) Distribution { return dist.MaximumModulus{K: int(p[0]), Nu: p[1]} }, Everyday: everydayScale},
 }

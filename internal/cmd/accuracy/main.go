@@ -5,8 +5,10 @@
 package main
 
 import (
+	"errors"
 	"flag"
 	"fmt"
+	"io/fs"
 	"log"
 	"os"
 	"text/tabwriter"
@@ -28,6 +30,9 @@ func main() {
 	}
 	for _, t := range accuracy.Tables {
 		rows, err := accuracy.Load(*dir, t)
+		if errors.Is(err, fs.ErrNotExist) {
+			continue // another directory may hold only some of the tables
+		}
 		if err != nil {
 			log.Fatal(err)
 		}
