@@ -57,8 +57,8 @@ func sqrtPair(a dd.DD) dd.DD {
 	return dd.DD{Hi: s, Lo: (math.FMA(-s, s, a.Hi) + a.Lo) / (2 * s)}
 }
 
-// lgamma1p returns log Gamma(1+a) for 0 < a < 16, with an error below 2^-63.
-func lgamma1p(a float64) (hi, lo float64) {
+// lgamma1p returns log Gamma(1+a+al) for 0 < a < 16 and a low part al, with an error below 2^-62.
+func lgamma1p(a, al float64) (hi, lo float64) {
 	i := int(a * 16)
 	t := &lgammaTable[i]
 	h := a - (float64(i)+0.5)/16
@@ -67,7 +67,7 @@ func lgamma1p(a float64) (hi, lo float64) {
 	c := &t.c
 	p := ((c[0] + h*c[1]) + q*(c[2]+h*c[3])) + q2*(((c[4]+h*c[5])+q*(c[6]+h*c[7]))+q2*((c[8]+h*c[9])+q*(c[10]+h*c[11])))
 	e := h * t.c1
-	el := math.FMA(h, t.c1, -e) + (h*t.c1l + t.c0l)
+	el := math.FMA(h, t.c1, -e) + (h*t.c1l + t.c0l) + al*(t.c1+2*h*c[0])
 	s := q * p
 	// |c0| may be below |e| near the zeros at 0 and 1.
 	hi, lo = dd.TwoSum(t.c0, e)
@@ -88,7 +88,7 @@ func gammaQuickKernel(a float64, x dd.DD) (l acc, m dd.DD) {
 		lx := dd.LogQuick(x)
 		l.addProd(a, lx.Hi, lx.Lo)
 		l.add(-x.Hi, -x.Lo)
-		g, gl := lgamma1p(a)
+		g, gl := lgamma1p(a, 0)
 		l.add(-g, -gl)
 		return l, dd.DD{Hi: a}
 	}
@@ -151,7 +151,7 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	}
 	if x0 < 2.5 {
 		p := divPair(mulPair(f.M, gammaQuickSeries(a, x, 18)), dd.DD{Hi: a})
-		if p.Hi > 0.999 {
+		if p.Hi > 0.99 {
 			return Scaled{}, false, false
 		}
 		s := 1 - p.Hi

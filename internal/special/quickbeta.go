@@ -40,7 +40,7 @@ func betaQuickKernel(a, b float64, x, y dd.DD) (l acc, m dd.DD) {
 	}
 	l.addProd(a, u.Hi, u.Lo)
 	l.addProd(b, v.Hi, v.Lo)
-	g, gl := lgamma1p(lo)
+	g, gl := lgamma1p(lo, 0)
 	l.add(-g, -gl)
 	if hi >= stirlingMin {
 		// Gamma(s)/Gamma(hi) = hi^lo exp((s-1/2) log(s/hi) - lo + δ(s) - δ(hi)).
@@ -53,11 +53,10 @@ func betaQuickKernel(a, b float64, x, y dd.DD) (l acc, m dd.DD) {
 		l.add(stirlingQuick(s.Hi)-stirlingQuick(hi), 0)
 		return l, dd.DD{Hi: lo}
 	}
-	g, gl = lgamma1p(hi)
+	g, gl = lgamma1p(hi, 0)
 	l.add(-g, -gl)
 	if s.Hi < stirlingMin {
-		g, gl = lgamma1p(s.Hi)
-		gl += s.Lo * math.Log(s.Hi+1) // the slope is near the logarithm
+		g, gl = lgamma1p(s.Hi, s.Lo)
 	} else {
 		g, gl = lgammaBig(s)
 	}
@@ -114,7 +113,7 @@ func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 	}
 	if x.Hi > 0.9 && y.Hi*s.Hi < 3 {
 		p := divPair(mulPair(f.M, betaQuickSeries(b, s, y, 18)), dd.DD{Hi: b})
-		if p.Hi > 0.999 {
+		if p.Hi > 0.99 {
 			return Scaled{}, false, false
 		}
 		v := 1 - p.Hi
