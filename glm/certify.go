@@ -1,8 +1,6 @@
 package glm
 
 import (
-	"fmt"
-
 	"subsume.example/internal/linalg"
 	"subsume.example/lrt"
 )
@@ -16,7 +14,7 @@ import (
 //
 // with one constant c_j for each j.
 func (j *joint) certify(c lrt.Comparison, s, b *view) (*lrt.Certificate, error) {
-	cert := &lrt.Certificate{Exact: true, Tol: 1e-8, C: []float64{1}, Hypothesis: hypothesis(s, b)}
+	cert := &lrt.Certificate{Exact: true, Tol: 1e-8}
 	for _, v := range []*view{s, b} {
 		for _, col := range v.m.cols {
 			if col.FromResponse {
@@ -47,20 +45,6 @@ func (j *joint) within(v *view, m *Model) bool {
 		}
 	}
 	return true
-}
-
-func hypothesis(s, b *view) string {
-	if len(s.m.eqs) > len(b.m.eqs) {
-		t := ""
-		for i, e := range s.m.eqs[len(b.m.eqs):] {
-			if i > 0 {
-				t += " and "
-			}
-			t += equationText(e)
-		}
-		return t
-	}
-	return fmt.Sprintf("the mean of %s follows %s", b.m.response, s.m)
 }
 
 func (j *joint) certifyNumerically(cert *lrt.Certificate, c lrt.Comparison, s, b *view) (*lrt.Certificate, error) {
@@ -130,12 +114,13 @@ func (j *joint) certifyNumerically(cert *lrt.Certificate, c lrt.Comparison, s, b
 		}
 		check("numerator", "Pn M0 = 0", qn.Overlap(m0))
 	}
+	cert.C = []float64{1}
 	// Rows beyond the joint factor belong to Pd when the error is all rows.
 	beyond := all && int(j.n) > j.factor.Rank
 	for _, r := range ef.Random {
 		m, ok := r.Space.(*Model)
 		if !ok {
-			return nil, fmt.Errorf("%w: %T is not a linear model", lrt.ErrInvalid, r.Space)
+			return nil, notLinear(r.Space)
 		}
 		gs, err := j.groups(m)
 		if err != nil {

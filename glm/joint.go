@@ -16,8 +16,10 @@ type joint struct {
 	src      Source
 	response string
 	opt      Options
+	at       places
 	cols     []*bound // every column once
 	offsets  []string // right-hand side i+1
+	offsetAt []int    // their fields
 
 	basis  // centre and scale of what was accumulated
 	tally  // what the rows were
@@ -32,7 +34,7 @@ type basis struct {
 	shifted bool
 	shift   []float64 // by dense column; the response last
 	exp     []int
-	powers  []*powers // by group: the conditioned basis of a polynomial
+	powers  map[int]*powers // by group: the conditioned basis of a polynomial
 }
 
 // tally counts the rows.
@@ -59,7 +61,7 @@ func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
 		if _, err := c.Each(func(s lrt.Space) (lrt.Space, error) {
 			m, ok := s.(*Model)
 			if !ok {
-				return nil, fmt.Errorf("%w: %T is not a linear model", lrt.ErrInvalid, s)
+				return nil, notLinear(s)
 			}
 			models = append(models, m)
 			return s, nil
@@ -91,7 +93,8 @@ func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
 // newJoint factors the columns of the models.
 func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, error) {
 	first := models[0]
-	j := &joint{src: first.src, response: first.response, opt: first.opt}
+	j := &joint{src: first.src, response: first.response, opt: first.opt, at: first.at}
+	j.cols = make([]*bound, 0, len(models[len(models)-1].cols)+len(first.cols))
 	j.shifted = true
 	largest := 0
 	for _, m := range models {
@@ -114,6 +117,7 @@ func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, err
 		}
 		if m.opt.Offset != "" && j.offset(m.opt.Offset) == 0 {
 			j.offsets = append(j.offsets, m.opt.Offset)
+			j.offsetAt = append(j.offsetAt, m.at.offset)
 		}
 		j.opt.RankTolerance = math.Max(j.opt.RankTolerance, m.opt.RankTolerance)
 	}
@@ -123,6 +127,7 @@ func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, err
 	if err := j.accumulate(ctx); err != nil {
 		return nil, err
 	}
+	j.gram.Finish()
 	if !j.gram.Finite() {
 		return nil, fmt.Errorf("glm: %w: response %q or a column is beyond 1e300 on its own scale", ErrOverflow, j.response)
 	}

@@ -68,9 +68,13 @@ type Model struct {
 	cols     []*bound
 	opt      Options
 	obs      lrt.Observations
+	at       places
 	eqs      []lrt.Equation // restrictions on the coefficients
 	joint    *joint         // where it is a view on a joint factorization
 }
+
+// places are the positions in the schema of what is not a column: −1 for none.
+type places struct{ response, weights, offset int }
 
 // bound is a term with its columns.
 type bound struct {
@@ -91,14 +95,15 @@ var (
 // Errors are *ColumnError for a field that is missing, of the wrong type, or has
 // a value at fault, and *TermError for a term.
 func Normal(ctx context.Context, src Source, response string, terms []Term, o *Options) (*Model, error) {
-	m := &Model{src: src, response: response}
+	m := &Model{src: src, response: response, at: places{-1, -1, -1}}
 	if o != nil {
 		m.opt = *o
 	}
 	if src == nil {
 		return nil, &ColumnError{Row: -1, Err: ErrEmpty}
 	}
-	if _, err := findNumeric(src, response); err != nil {
+	var err error
+	if m.at.response, err = findNumeric(src, response); err != nil {
 		return nil, err
 	}
 	m.obs = src.Observations(response)
@@ -120,14 +125,15 @@ func (m *Model) checkOptions() error {
 	case o.Weights.Kind > Precision || (o.Weights.Kind == NoWeights) != (o.Weights.Field == ""):
 		return fmt.Errorf("glm: %w: weights need a field and a kind, Frequency or Precision", ErrOption)
 	}
+	var err error
 	if o.Weights.Field != "" {
-		if _, err := findNumeric(m.src, o.Weights.Field); err != nil {
+		if m.at.weights, err = findNumeric(m.src, o.Weights.Field); err != nil {
 			return err
 		}
 		m.obs.Weights = m.src.Observations(o.Weights.Field).Response
 	}
 	if o.Offset != "" {
-		if _, err := findNumeric(m.src, o.Offset); err != nil {
+		if m.at.offset, err = findNumeric(m.src, o.Offset); err != nil {
 			return err
 		}
 	}

@@ -14,77 +14,64 @@ import (
 
 // filler turns windows of a source into blocks of columns on the basis of a joint.
 type filler struct {
-	j       *joint
-	y       int   // field of the response
-	w       int   // field of the weights, −1
-	offsets []int // fields of the offsets
-	first   []int // first dense column of each group
+	j     *joint
+	first []int // first dense column of each group
+	yc    int   // column of the response; the offsets follow
 
 	block linalg.Block
-	part  Window // scratch
-	start int    // row number of the block's first row
-	spare [][]float64
+	low   [][]float64    // storage of low parts; block.Lo shows those that are not zero
+	part  Window         // scratch
+	start int            // row number of the block's first row
 	watch func(w Window) // called with every window added; may be nil
 	tally
 }
 
 // newFiller prepares the buffers for blocks of up to rows rows.
-func (j *joint) newFiller(rows int) (*filler, error) {
-	f := &filler{j: j, w: -1}
-	var err error
-	if f.y, err = findNumeric(j.src, j.response); err != nil {
-		return nil, err
-	}
-	if j.opt.Weights.Field != "" {
-		if f.w, err = findNumeric(j.src, j.opt.Weights.Field); err != nil {
-			return nil, err
-		}
-	}
-	for _, o := range j.offsets {
-		at, err := findNumeric(j.src, o)
-		if err != nil {
-			return nil, err
-		}
-		f.offsets = append(f.offsets, at)
-	}
-	n, idx, val := 1+len(f.offsets), 0, 0
-	for _, b := range j.cols {
-		f.first = append(f.first, n-1-len(f.offsets))
+func (j *joint) newFiller(rows int) *filler {
+	f := &filler{j: j}
+	n, idx, val := 0, 0, 0
+	f.first = make([]int, len(j.cols))
+	for g, b := range j.cols {
+		f.first[g] = n
 		if b.dense() {
 			n += len(b.Names)
 		} else if idx++; b.Value != nil {
 			val++
 		}
 	}
+	f.yc = n
+	n += 1 + len(j.offsets)
 	floats := make([]float64, (2*n+2*val+1)*rows)
 	take := func() []float64 {
 		s := floats[:rows:rows]
 		floats = floats[rows:]
 		return s
 	}
-	heads := make([][]float64, 2*n)
-	f.block.Hi, f.block.Lo = heads[:n], heads[n:]
+	heads := make([][]float64, 3*n+2*idx)
+	f.block.Hi, f.block.Lo, f.low = heads[:n:n], heads[n:2*n:2*n], heads[2*n:3*n:3*n]
 	for i := range n {
-		f.block.Hi[i], f.block.Lo[i] = take(), take()
+		f.block.Hi[i], f.low[i] = take(), take()
 	}
-	if f.w >= 0 {
+	if j.at.weights >= 0 {
 		f.block.Weight = take()
 	}
 	if idx > 0 {
-		f.block.VHi, f.block.VLo = make([][]float64, 0, idx), make([][]float64, 0, idx)
+		f.block.VHi, f.block.VLo = heads[3*n:3*n+idx], heads[3*n+idx:]
+		f.block.Index = make([][]int32, idx)
+		ints := make([]int32, idx*rows)
+		k := 0
 		for _, b := range j.cols {
 			if b.dense() {
 				continue
 			}
-			f.block.Index = append(f.block.Index, make([]int32, rows))
+			f.block.Index[k] = ints[k*rows : (k+1)*rows : (k+1)*rows]
 			if b.Value != nil {
-				f.block.VHi, f.block.VLo = append(f.block.VHi, take()), append(f.block.VLo, take())
-			} else {
-				f.block.VHi, f.block.VLo = append(f.block.VHi, nil), append(f.block.VLo, nil)
+				f.block.VHi[k], f.block.VLo[k] = take(), take()
 			}
+			k++
 		}
 	}
-	return f, nil
+	return f
 }
 
 // add appends rows of a window to the block, which must have room.
@@ -95,51 +82,105 @@ func (f *filler) add(w Window) error {
 	}
 	if at == 0 {
 		f.start = w.First
+		for c := range f.block.Lo {
+			f.block.Lo[c] = nil
+		}
 	}
 	end := at + w.Rows
-	var hi, lo [8][]float64
 	idx := 0
 	for g, b := range j.cols {
-		if b.dense() {
-			n := len(b.Names)
-			h, l := hi[:0], lo[:0]
-			for c := range n {
-				h = append(h, f.block.Hi[f.first[g]+c][at:end])
-				l = append(l, f.block.Lo[f.first[g]+c][at:end])
+		c := f.first[g]
+		switch {
+		case b.field > 0:
+			f.copy(w, b.field-1, c, at, end)
+		case b.Key == "constant":
+			one := f.block.Hi[c][at:end]
+			for i := range one {
+				one[i] = 1
 			}
-			if p := j.basis.powers[g]; p != nil {
-				p.fill(w, h, l)
-			} else if b.powers != nil { // the first block: chooseBasis forms the powers
-				copyField(w, b.powers.field, h[0], l[0])
-			} else if err := b.Fill(w, h, l); err != nil {
-				return f.blame(b, err)
+		case b.powers != nil && j.basis.powers[g] == nil: // the first block: chooseBasis forms the powers
+			for k := range b.Names {
+				f.copy(w, b.powers.field, c+k, at, end)
 			}
-			continue
-		}
-		if err := b.Index(w, f.block.Index[idx][at:end]); err != nil {
-			return f.blame(b, err)
-		}
-		for i, l := range f.block.Index[idx][at:end] {
-			if int(l) >= len(b.Names) || l < -1 {
-				return &TermError{Term: b.name, Err: fmt.Errorf("%w: index %d in row %d, the term has %d columns", ErrTerm, l, w.First+i, len(b.Names))}
+		case b.dense():
+			if err := f.fill(w, g, at, end); err != nil {
+				return err
 			}
-		}
-		if b.Value != nil {
-			if err := b.Value(w, f.block.VHi[idx][at:end], f.block.VLo[idx][at:end]); err != nil {
-				return f.blame(b, err)
+		default:
+			if err := f.index(w, b, idx, at, end); err != nil {
+				return err
 			}
+			idx++
 		}
-		idx++
 	}
-	n := len(f.block.Hi) - 1 - len(f.offsets)
-	copyField(w, f.y, f.block.Hi[n][at:], f.block.Lo[n][at:])
-	for k, o := range f.offsets {
-		copyField(w, o, f.block.Hi[n+1+k][at:], f.block.Lo[n+1+k][at:])
+	f.copy(w, j.at.response, f.yc, at, end)
+	for k, o := range j.offsetAt {
+		f.copy(w, o, f.yc+1+k, at, end)
 	}
-	if f.w >= 0 {
-		copy(f.block.Weight[at:end], w.Hi[f.w])
+	if j.at.weights >= 0 {
+		copy(f.block.Weight[at:end], w.Hi[j.at.weights])
 	}
 	f.block.Rows = end
+	return nil
+}
+
+// copy takes a numeric field of the window as column c.
+func (f *filler) copy(w Window, field, c, at, end int) {
+	copy(f.block.Hi[c][at:end], w.Hi[field])
+	switch {
+	case w.Lo != nil && w.Lo[field] != nil:
+		f.lower(c, at)
+		copy(f.block.Lo[c][at:end], w.Lo[field])
+	case f.block.Lo[c] != nil:
+		clear(f.block.Lo[c][at:end])
+	}
+}
+
+// lower makes the low part of column c stand, zero in the rows before at.
+func (f *filler) lower(c, at int) {
+	if f.block.Lo[c] == nil {
+		f.block.Lo[c] = f.low[c]
+		clear(f.low[c][:at])
+	}
+}
+
+// fill asks a term for its dense columns.
+func (f *filler) fill(w Window, g, at, end int) error {
+	b, c := f.j.cols[g], f.first[g]
+	n := len(b.Names)
+	heads := make([][]float64, 2*n)
+	hi, lo := heads[:n], heads[n:]
+	for k := range n {
+		f.lower(c+k, at)
+		hi[k], lo[k] = f.block.Hi[c+k][at:end], f.block.Lo[c+k][at:end]
+	}
+	if p := f.j.basis.powers[g]; p != nil {
+		p.fill(w, hi, lo)
+		return nil
+	}
+	if err := b.Fill(w, hi, lo); err != nil {
+		return f.blame(b, err)
+	}
+	return nil
+}
+
+// index asks a term for its non-zero column in each row.
+func (f *filler) index(w Window, b *bound, idx, at, end int) error {
+	to := f.block.Index[idx][at:end]
+	if err := b.Index(w, to); err != nil {
+		return f.blame(b, err)
+	}
+	for i, l := range to {
+		if int(l) >= len(b.Names) || l < -1 {
+			return &TermError{Term: b.name, Err: fmt.Errorf("%w: index %d in row %d, the term has %d columns", ErrTerm, l, w.First+i, len(b.Names))}
+		}
+	}
+	if b.Value == nil {
+		return nil
+	}
+	if err := b.Value(w, f.block.VHi[idx][at:end], f.block.VLo[idx][at:end]); err != nil {
+		return f.blame(b, err)
+	}
 	return nil
 }
 
@@ -155,10 +196,9 @@ func (f *filler) blame(b *bound, err error) error {
 // With choose set it first chooses the basis from this block.
 func (f *filler) finish(choose bool) error {
 	j, n := f.j, f.block.Rows
-	yc := len(f.block.Hi) - 1 - len(f.offsets)
 	for c := range f.block.Hi {
 		if i := badValue(f.block.Hi[c][:n]); i >= 0 {
-			return f.notFinite(c, yc, i)
+			return f.notFinite(c, i)
 		}
 	}
 	for k := range f.block.VHi {
@@ -166,17 +206,17 @@ func (f *filler) finish(choose bool) error {
 			continue
 		}
 		if i := badValue(f.block.VHi[k][:n]); i >= 0 {
-			return f.notFinite(-1, yc, i)
+			return f.notFinite(-1, i)
 		}
 	}
-	for i := range n {
-		if a := math.Abs(f.block.Hi[yc][i]); a > f.maxY {
-			f.maxY = a
-		}
-		if f.block.Lo[yc][i] != 0 {
-			f.decimal = true
+	maxY := f.maxY
+	for _, y := range f.block.Hi[f.yc][:n] {
+		if y = math.Abs(y); y > maxY {
+			maxY = y
 		}
 	}
+	f.maxY = maxY
+	f.decimal = f.decimal || f.block.Lo[f.yc] != nil
 	f.rows += n
 	if f.block.Weight == nil {
 		f.n += float64(n)
@@ -187,22 +227,33 @@ func (f *filler) finish(choose bool) error {
 		f.chooseBasis()
 	}
 	for c := range f.block.Hi {
-		k := min(c, yc) // offsets share the scale of the response
+		k := min(c, f.yc) // offsets share the scale of the response
+		if j.shift[k] == 0 && j.exp[k] == 0 {
+			continue
+		}
 		shift := j.shift[k]
-		if c > yc {
+		if c > f.yc {
 			shift = 0
 		}
-		toBasis(f.block.Hi[c][:n], f.block.Lo[c][:n], shift, j.exp[k])
+		f.toBasis(c, shift, j.exp[k])
 	}
 	return nil
 }
 
+// badValue returns the place of a value that is no number, −1 for none.
 func badValue(x []float64) int {
-	var s float64
-	for _, v := range x {
-		s += v * 0
+	var s, t, u, v float64
+	i := 0
+	for ; i+3 < len(x); i += 4 {
+		s += x[i] * 0
+		t += x[i+1] * 0
+		u += x[i+2] * 0
+		v += x[i+3] * 0
 	}
-	if s == 0 {
+	for ; i < len(x); i++ {
+		s += x[i] * 0
+	}
+	if s+t+u+v == 0 {
 		return -1
 	}
 	for i, v := range x {
@@ -214,47 +265,64 @@ func badValue(x []float64) int {
 }
 
 // toBasis brings a column to its shift and scale, exactly where the digits allow.
-func toBasis(hi, lo []float64, shift float64, exp int) {
+func (f *filler) toBasis(c int, shift float64, exp int) {
+	n := f.block.Rows
+	hi := f.block.Hi[c][:n]
 	if shift != 0 {
-		for i, h := range hi {
-			s, e := dd.TwoSum(h, -shift)
-			hi[i], lo[i] = dd.QuickTwoSum(s, e+lo[i])
+		lost := false
+		low := f.low[c][:n]
+		if f.block.Lo[c] == nil {
+			for i, h := range hi {
+				hi[i], low[i] = dd.TwoSum(h, -shift)
+				lost = lost || low[i] != 0
+			}
+		} else {
+			lost = true
+			for i, h := range hi {
+				s, e := dd.TwoSum(h, -shift)
+				hi[i], low[i] = dd.QuickTwoSum(s, e+low[i])
+			}
+		}
+		if lost {
+			f.block.Lo[c] = f.low[c]
 		}
 	}
 	if exp == 0 {
 		return
 	}
-	if scale := math.Ldexp(1, -exp); exp > -1000 && exp < 1000 {
-		for i := range hi {
-			hi[i] *= scale
-			lo[i] *= scale
+	for _, x := range [][]float64{hi, f.block.Lo[c]} {
+		if x == nil {
+			continue
 		}
-		return
-	}
-	for i := range hi {
-		hi[i], lo[i] = math.Ldexp(hi[i], -exp), math.Ldexp(lo[i], -exp)
+		x = x[:n]
+		if scale := math.Ldexp(1, -exp); exp > -1000 && exp < 1000 {
+			for i := range x {
+				x[i] *= scale
+			}
+			continue
+		}
+		for i := range x {
+			x[i] = math.Ldexp(x[i], -exp)
+		}
 	}
 }
 
 // notFinite says which column of which row holds no number.
-func (f *filler) notFinite(c, yc, i int) error {
+func (f *filler) notFinite(c, i int) error {
 	e := &ColumnError{Row: f.start + i, Err: ErrNotFinite}
 	switch {
 	case c < 0:
 		e.Column = "covariate of a product"
-	case c == yc:
+	case c == f.yc:
 		e.Column = f.j.response
-	case c > yc:
-		e.Column = f.j.offsets[c-yc-1]
+	case c > f.yc:
+		e.Column = f.j.offsets[c-f.yc-1]
 	default:
-		g := 0
-		for g+1 < len(f.first) && f.first[g+1] <= c {
-			g++
+		for g, b := range f.j.cols {
+			if k := c - f.first[g]; b.dense() && k >= 0 && k < len(b.Names) {
+				e.Column = b.Names[k]
+			}
 		}
-		for !f.j.cols[g].dense() {
-			g--
-		}
-		e.Column = f.j.cols[g].Names[c-f.first[g]]
 	}
 	if c >= 0 && math.IsNaN(f.block.Hi[c][i]) {
 		e.Err = errMissingRow
@@ -289,73 +357,84 @@ func (f *filler) weigh() error {
 	return nil
 }
 
-// chooseBasis sets shift and scale from the first block: a provisional mean, and
-// the power of two next to the largest distance from it.
+// chooseBasis sets shift and scale from the first block: a provisional mean where
+// the values are far from zero, and a power of two where they are far from one.
 func (f *filler) chooseBasis() {
 	j, n := f.j, f.block.Rows
-	yc := len(f.block.Hi) - 1 - len(f.offsets)
-	j.shift, j.exp = make([]float64, yc+1), make([]int, yc+1)
-	fixed := make([]bool, yc+1)
+	j.shift, j.exp = make([]float64, f.yc+1), make([]int, f.yc+1)
 	for g, b := range j.cols {
-		if !b.dense() {
-			continue
-		}
-		c := f.first[g]
-		if b.Key == "constant" {
-			fixed[c] = true
-		}
-		if p := b.powers; p != nil {
-			q := &powers{field: p.field, degree: p.degree}
-			if j.shifted {
-				q.centre = provisional(f.block.Hi[c][:n])
-			}
-			q.exp = spread(f.block.Hi[c][:n], q.centre)
-			j.basis.powers[g] = q
-			for k := range p.degree {
-				fixed[c+k] = true
-			}
-			scale := math.Ldexp(1, -q.exp)
-			for i := range n {
-				u := dd.DD{Hi: f.block.Hi[c][i], Lo: f.block.Lo[c][i]}.AddF(-q.centre)
-				u = dd.DD{Hi: u.Hi * scale, Lo: u.Lo * scale}
-				x := u
-				for k := range p.degree {
-					if k > 0 {
-						x = x.Mul(u)
-					}
-					f.block.Hi[c+k][i], f.block.Lo[c+k][i] = x.Hi, x.Lo
-				}
+		switch c := f.first[g]; {
+		case !b.dense() || b.Key == "constant":
+		case b.powers != nil:
+			f.choosePowers(g)
+		default:
+			for k := range b.Names {
+				j.shift[c+k], j.exp[c+k] = j.centre(f.block.Hi[c+k][:n])
 			}
 		}
 	}
-	for c := range yc + 1 {
-		if fixed[c] {
-			continue
+	j.shift[f.yc], j.exp[f.yc] = j.centre(f.block.Hi[f.yc][:n])
+}
+
+// centre returns a shift and a scale for a column of plain values.
+func (j *joint) centre(x []float64) (shift float64, exp int) {
+	if j.shifted {
+		// Far from zero x − shift is exact (Sterbenz 1974) and saves digits. Near
+		// zero there are none to save, and x itself has no low part.
+		if m := provisional(x); math.Abs(m) > 16*math.Ldexp(1, spread(x, m)) {
+			shift = m
 		}
-		x := f.block.Hi[c][:n]
-		if j.shifted {
-			// Far from zero x − shift is exact (Sterbenz 1974) and saves digits. Near
-			// zero there are none to save, and x itself has no low part.
-			if m := provisional(x); math.Abs(m) > 16*math.Ldexp(1, spread(x, m)) {
-				j.shift[c] = m
+	}
+	if exp = spread(x, shift); exp > -64 && exp < 64 {
+		exp = 0
+	}
+	return shift, exp
+}
+
+// choosePowers centres a polynomial and forms its powers in the first block.
+func (f *filler) choosePowers(g int) {
+	j, n, c := f.j, f.block.Rows, f.first[g]
+	q := &powers{field: j.cols[g].powers.field, degree: j.cols[g].powers.degree}
+	x := f.block.Hi[c][:n]
+	if j.shifted {
+		q.centre = provisional(x)
+	}
+	q.exp = spread(x, q.centre)
+	if j.basis.powers == nil {
+		j.basis.powers = make(map[int]*powers)
+	}
+	j.basis.powers[g] = q
+	scale := math.Ldexp(1, -q.exp)
+	for k := range q.degree {
+		f.lower(c+k, 0)
+		if f.block.Lo[c] == nil {
+			clear(f.low[c+k][:n])
+		}
+	}
+	for i := range n {
+		u := dd.DD{Hi: x[i], Lo: f.block.Lo[c][i]}.AddF(-q.centre)
+		u = dd.DD{Hi: u.Hi * scale, Lo: u.Lo * scale}
+		x := u
+		for k := range q.degree {
+			if k > 0 {
+				x = x.Mul(u)
 			}
+			f.block.Hi[c+k][i], f.block.Lo[c+k][i] = x.Hi, x.Lo
 		}
-		j.exp[c] = spread(x, j.shift[c])
 	}
 }
 
-// provisional returns a value near the middle of x: any will do, a mean serves.
+// provisional returns a value near the middle of x: one that occurs.
 func provisional(x []float64) float64 {
-	n := float64(len(x))
+	inv := 1 / float64(len(x))
 	var s float64
 	for _, v := range x {
-		s += v / n
+		s += v * inv
 	}
-	// The nearest value that occurs is subtracted exactly from its like.
-	best := x[0]
+	best, near := x[0], math.Inf(1)
 	for _, v := range x {
-		if math.Abs(v-s) < math.Abs(best-s) {
-			best = v
+		if d := math.Abs(v - s); d < near {
+			best, near = v, d
 		}
 	}
 	return best
@@ -378,13 +457,21 @@ func spread(x []float64, centre float64) int {
 // blocks passes over the rows in blocks of fixed bounds. The visitor owns the
 // filler's block until it returns.
 func (f *filler) blocks(ctx context.Context, visit func(f *filler) error) error {
-	flush := func() error {
-		if f.block.Rows == 0 {
-			return nil
+	if s, ok := f.j.src.(Sliced); ok {
+		for at := 0; at < s.Len(); at += linalg.BlockRows {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			s.Slice(&f.part, at, min(linalg.BlockRows, s.Len()-at))
+			f.block.Rows = 0
+			if err := f.add(f.part); err != nil {
+				return err
+			}
+			if err := visit(f); err != nil {
+				return err
+			}
 		}
-		err := visit(f)
-		f.block.Rows = 0
-		return err
+		return nil
 	}
 	for w, err := range f.j.src.Windows(ctx) {
 		if err != nil {
@@ -395,18 +482,21 @@ func (f *filler) blocks(ctx context.Context, visit func(f *filler) error) error 
 			if err := f.add(f.cut(w, from, to)); err != nil {
 				return err
 			}
-			from = to
-			if f.block.Rows == linalg.BlockRows {
+			if from = to; f.block.Rows == linalg.BlockRows {
 				if err := ctx.Err(); err != nil {
 					return err
 				}
-				if err := flush(); err != nil {
+				if err := visit(f); err != nil {
 					return err
 				}
+				f.block.Rows = 0
 			}
 		}
 	}
-	return flush()
+	if f.block.Rows == 0 {
+		return nil
+	}
+	return visit(f)
 }
 
 // cut returns rows from to to of a window.
@@ -435,17 +525,24 @@ func (f *filler) cut(w Window, from, to int) Window {
 	return *p
 }
 
-// shape returns the groups of the joint's columns.
-func (j *joint) shape() []linalg.Group {
-	gs := make([]linalg.Group, len(j.cols))
+// shape returns the groups of the joint's columns, and the dense column of the
+// constant, −1.
+func (j *joint) shape() (gs []linalg.Group, ones int) {
+	gs = make([]linalg.Group, len(j.cols))
+	ones = -1
+	n := 0
 	for i, b := range j.cols {
+		if b.Key == "constant" {
+			ones = n
+		}
 		if b.dense() {
 			gs[i].Dense = len(b.Names)
+			n += len(b.Names)
 		} else {
 			gs[i].Levels, gs[i].Valued = len(b.Names), b.Value != nil
 		}
 	}
-	return gs
+	return gs, ones
 }
 
 // chunkRows is the number of rows that a worker takes at a time.
@@ -453,20 +550,16 @@ const chunkRows = 32 * linalg.BlockRows
 
 // accumulate makes the pass that fills the Gram.
 func (j *joint) accumulate(ctx context.Context) error {
-	j.basis.powers = make([]*powers, len(j.cols))
-	j.gram = linalg.NewGram(j.shape(), 1+len(j.offsets), j.opt.Weights.Kind == Precision)
+	groups, ones := j.shape()
+	j.gram = linalg.NewGram(groups, 1+len(j.offsets), ones, j.opt.Weights.Kind == Precision)
 	size := linalg.BlockRows
-	sliced, ok := j.src.(Sliced)
-	if ok {
+	if sliced, ok := j.src.(Sliced); ok {
 		size = min(size, max(sliced.Len(), 1))
 		if sliced.Len() > chunkRows && j.gram.Small() && j.workers() > 1 {
 			return j.accumulateParallel(ctx, sliced)
 		}
 	}
-	f, err := j.newFiller(size)
-	if err != nil {
-		return err
-	}
+	f := j.newFiller(size)
 	total := j.gram
 	part := total
 	chunk := 0
@@ -481,9 +574,7 @@ func (j *joint) accumulate(ctx context.Context) error {
 		if err := f.finish(f.start == 0); err != nil {
 			return err
 		}
-		trim(&f.block)
 		part.Add(&f.block)
-		restore(&f.block, f)
 		return nil
 	}); err != nil {
 		return err
@@ -509,43 +600,9 @@ func (j *joint) workers() int {
 	return runtime.GOMAXPROCS(0)
 }
 
-// trim hides low parts that are zero throughout the block, which saves half the work.
-func trim(b *linalg.Block) {
-	for c, lo := range b.Lo {
-		zero := true
-		for _, x := range lo[:b.Rows] {
-			if x != 0 {
-				zero = false
-				break
-			}
-		}
-		if zero {
-			b.Lo[c] = nil
-		}
-	}
-}
-
-// restore gives hidden low parts back their (zero) storage.
-func restore(b *linalg.Block, f *filler) {
-	for c := range b.Lo {
-		if b.Lo[c] == nil {
-			if f.spare == nil {
-				f.spare = make([][]float64, len(b.Lo))
-			}
-			if f.spare[c] == nil {
-				f.spare[c] = make([]float64, len(b.Hi[c]))
-			}
-			b.Lo[c] = f.spare[c]
-		}
-	}
-}
-
 // accumulateParallel shares chunks of rows among workers and merges their sums in order.
 func (j *joint) accumulateParallel(ctx context.Context, src Sliced) error {
-	f, err := j.newFiller(linalg.BlockRows)
-	if err != nil {
-		return err
-	}
+	f := j.newFiller(linalg.BlockRows)
 	// The first block fixes the basis for all.
 	var w Window
 	src.Slice(&w, 0, min(linalg.BlockRows, src.Len()))
@@ -564,9 +621,7 @@ func (j *joint) accumulateParallel(ctx context.Context, src Sliced) error {
 	workers := min(j.workers(), chunks)
 	fillers := make([]*filler, workers)
 	for i := range fillers {
-		if fillers[i], err = j.newFiller(linalg.BlockRows); err != nil {
-			return err
-		}
+		fillers[i] = j.newFiller(linalg.BlockRows)
 	}
 	round := make([]outcome, 8*workers) // chunks between two merges
 	empty := j.gram
@@ -606,22 +661,19 @@ func (j *joint) accumulateParallel(ctx context.Context, src Sliced) error {
 
 // chunk accumulates one chunk of rows.
 func (f *filler) chunk(ctx context.Context, src Sliced, c int, g *linalg.Gram) error {
-	var w Window
 	for at := c * chunkRows; at < min(src.Len(), (c+1)*chunkRows); at += linalg.BlockRows {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		src.Slice(&w, at, min(linalg.BlockRows, src.Len()-at))
+		src.Slice(&f.part, at, min(linalg.BlockRows, src.Len()-at))
 		f.block.Rows = 0
-		if err := f.add(w); err != nil {
+		if err := f.add(f.part); err != nil {
 			return err
 		}
 		if err := f.finish(false); err != nil {
 			return err
 		}
-		trim(&f.block)
 		g.Add(&f.block)
-		restore(&f.block, f)
 	}
 	return nil
 }

@@ -7,6 +7,7 @@ import (
 	"math"
 
 	"subsume.example/internal/dd"
+	"subsume.example/internal/linalg"
 	"subsume.example/lrt"
 )
 
@@ -30,13 +31,9 @@ type RowFit struct {
 // row, in order. It stops at the first error.
 func (f *Fit) Each(ctx context.Context) iter.Seq2[RowFit, error] {
 	return func(yield func(RowFit, error) bool) {
-		r, err := f.newRowReader(f.j.src)
-		if err != nil {
-			yield(RowFit{}, err)
-			return
-		}
+		r := f.newRowReader(f.j.src)
 		stop := fmt.Errorf("stop")
-		err = r.fill.blocks(ctx, func(*filler) error {
+		err := r.fill.blocks(ctx, func(*filler) error {
 			if err := r.fill.finish(false); err != nil {
 				return err
 			}
@@ -59,11 +56,19 @@ type rowReader struct {
 	fill *filler
 }
 
-func (f *Fit) newRowReader(src Source) (*rowReader, error) {
+func (f *Fit) newRowReader(src Source) *rowReader {
 	j := *f.j
 	j.src = src
-	fill, err := j.newFiller(512)
-	return &rowReader{f, fill}, err
+	return &rowReader{f, j.newFiller(linalg.BlockRows)}
+}
+
+// dense returns column d of row i of the block.
+func (r *rowReader) dense(d, i int) dd.DD {
+	x := dd.DD{Hi: r.fill.block.Hi[d][i]}
+	if lo := r.fill.block.Lo[d]; lo != nil {
+		x.Lo = lo[i]
+	}
+	return x
 }
 
 // value returns the fitted value on the scale of the joint, and Xβ's squared
@@ -77,8 +82,7 @@ func (r *rowReader) value(i int) (fit dd.DD, h, bad float64) {
 		at := f.j.gram.Offset(g)
 		if col.dense() {
 			for k := range col.Names {
-				d := r.fill.first[g] + k
-				c.Set(at+k, dd.DD{Hi: b.Hi[d][i], Lo: b.Lo[d][i]})
+				c.Set(at+k, r.dense(r.fill.first[g]+k, i))
 			}
 			continue
 		}
@@ -101,8 +105,7 @@ func (r *rowReader) value(i int) (fit dd.DD, h, bad float64) {
 		half, _ = f.v.restr.reduce(half)
 	}
 	if f.v.rhs > 0 {
-		d := len(b.Hi) - 1 - len(r.fill.offsets) + f.v.rhs
-		fit = fit.Add(dd.DD{Hi: b.Hi[d][i], Lo: b.Lo[d][i]})
+		fit = fit.Add(r.dense(r.fill.yc+f.v.rhs, i))
 	}
 	return fit, math.Max(half.Dot(half).Float64(), 0), bad
 }
@@ -110,8 +113,7 @@ func (r *rowReader) value(i int) (fit dd.DD, h, bad float64) {
 func (f *Fit) row(r *rowReader, i int) RowFit {
 	b := &r.fill.block
 	fit, h, _ := r.value(i)
-	yc := len(b.Hi) - 1 - len(r.fill.offsets)
-	y := dd.DD{Hi: b.Hi[yc][i], Lo: b.Lo[yc][i]}
+	y := r.dense(r.fill.yc, i)
 	e, shift := f.j.yExp(), dd.From(f.j.yShift())
 	res := y.Sub(fit)
 	out := RowFit{Row: r.fill.start + i, Weight: 1,
@@ -171,10 +173,7 @@ func (f *Fit) Predict(ctx context.Context, rows Source) ([]Prediction, []lrt.War
 	if err != nil {
 		return nil, nil, err
 	}
-	r, err := f.newRowReader(a)
-	if err != nil {
-		return nil, nil, err
-	}
+	r := f.newRowReader(a)
 	var out []Prediction
 	var outside, lost []string
 	seen := make(map[string]bool)

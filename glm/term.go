@@ -41,6 +41,7 @@ type Columns struct {
 	// Value writes the value of that column; nil means 1.
 	Value func(w Window, hi, lo []float64) error
 
+	field     int      // of a plain covariate: its position in the schema, plus 1
 	fields    []string // fields the columns are made from
 	numeric   []string // those of them whose range matters to a prediction
 	powers    *powers  // conditioned basis of a polynomial
@@ -113,7 +114,7 @@ func (c Covariate) Bind(_ context.Context, src Source) (Columns, error) {
 			copyField(w, f, hi[0], lo[0])
 			return nil
 		},
-		fields: []string{c.Field}, numeric: []string{c.Field},
+		field: f + 1, fields: []string{c.Field}, numeric: []string{c.Field},
 	}, nil
 }
 

@@ -117,6 +117,19 @@ func (j *joint) yExp() int { return j.exp[len(j.exp)-1] }
 // factorization: that of Join where the spaces come from it, else one of their own.
 func (m *Model) FitPair(ctx context.Context, c lrt.Comparison) (lrt.Pair, error) {
 	j := m.joint
+	if c.Error == nil && c.Effects == nil {
+		s, ok := c.Restricted.(*Model)
+		if !ok {
+			return lrt.Pair{}, notLinear(c.Restricted)
+		}
+		if j == nil || s.joint != j {
+			var err error
+			if j, err = newJoint(ctx, []*Model{s, m}, true); err != nil {
+				return lrt.Pair{}, err
+			}
+		}
+		return j.pair(c)
+	}
 	if j != nil {
 		if _, err := c.Each(func(s lrt.Space) (lrt.Space, error) {
 			if v, ok := s.(*Model); !ok || v.joint != j {
@@ -136,6 +149,10 @@ func (m *Model) FitPair(ctx context.Context, c lrt.Comparison) (lrt.Pair, error)
 		j = c.Full.(*Model).joint
 	}
 	return j.pair(c)
+}
+
+func notLinear(s lrt.Space) error {
+	return fmt.Errorf("%w: %T is not a linear model of this package", lrt.ErrInvalid, s)
 }
 
 func (j *joint) pair(c lrt.Comparison) (lrt.Pair, error) {

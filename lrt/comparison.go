@@ -1,6 +1,9 @@
 package lrt
 
-import "context"
+import (
+	"context"
+	"fmt"
+)
 
 // Comparison is the question as a value: is the restricted space S enough, or
 // does the full space B, S ⊂ B, describe the data better than chance allows? A
@@ -37,6 +40,19 @@ type Effects struct {
 type RandomTerm struct {
 	Name  string
 	Space Space
+}
+
+// Hypothesis says in words what is tested: that the data follow the restricted
+// space, within the full one. Spaces that have a String method speak for themselves.
+func (c Comparison) Hypothesis() string {
+	return fmt.Sprintf("%v, against %v", describe(c.Restricted), describe(c.Full))
+}
+
+func describe(s Space) string {
+	if v, ok := s.(fmt.Stringer); ok {
+		return v.String()
+	}
+	return fmt.Sprintf("%T", s)
 }
 
 // Compare asks whether full describes the data better than restricted. It is

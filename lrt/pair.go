@@ -134,8 +134,6 @@ type Certificate struct {
 	// Residual is the largest violation seen, Tol what is allowed.
 	Residual, Tol float64
 	// C are the constants c_j: of the independent errors (1) first, then of the
-	// random terms in their order.
+	// random terms in their order; nil without random terms.
 	C []float64
-	// Hypothesis is the null in words.
-	Hypothesis string
 }

@@ -46,10 +46,11 @@ type Gram struct {
 
 	dd    []dd.DD   // packed by columns: dense columns and right-hand sides
 	diag  [][]dd.DD // by index group and level: Σ w v²
-	sums  []vec     // by index group: level·(nd+rhs)+j: Σ w v b_j
+	sums  []vec     // by index group: level·(nd+rhs)+j: Σ w v b_j; parts not renormalized before Finish
 	cross []cross   // by pair of index groups
 	count [][]int64 // rows by index group and level
 
+	ones     int // dense column that is 1 throughout, −1
 	weighted bool
 	rowsIn   int
 	wx       vec // scratch: weighted column
@@ -65,10 +66,10 @@ type cross struct {
 // maxCross is the largest table of level pairs that is kept dense: 32 MiB of counts.
 const maxCross = 1 << 22
 
-// NewGram returns an empty Gram. Weighted says that weights or values that are
-// not exact counts will come.
-func NewGram(groups []Group, rhs int, weighted bool) *Gram {
-	g := &Gram{groups: groups, rhs: rhs, weighted: weighted}
+// NewGram returns an empty Gram. ones is the dense column that is 1 throughout,
+// −1 for none; weighted says that weights that are not whole will come.
+func NewGram(groups []Group, rhs, ones int, weighted bool) *Gram {
+	g := &Gram{groups: groups, rhs: rhs, ones: ones, weighted: weighted}
 	if len(groups) > 0 {
 		buf := make([]int, 2*len(groups))
 		g.dense, g.index = buf[:len(groups)], buf[len(groups):]
@@ -118,21 +119,14 @@ func (g *Gram) Add(b *Block) {
 	n := b.Rows
 	g.rowsIn += n
 	m := g.nd + g.rhs
-	col := func(j int) vec {
-		v := vec{hi: b.Hi[j]}
-		if b.Lo != nil && b.Lo[j] != nil {
-			v.lo = b.Lo[j]
-		}
-		return v
-	}
 	for j := range m {
-		x := col(j)
+		x := b.column(j)
 		if b.Weight != nil {
 			x = g.weigh(x, b.Weight, n)
 		}
 		i := 0
 		for ; i+3 <= j; i += 4 {
-			r := dot4(x, col(i), col(i+1), col(i+2), col(i+3), n)
+			r := dot4(x, b.column(i), b.column(i+1), b.column(i+2), b.column(i+3), n)
 			at := packed(i, j)
 			for k := range r {
 				g.dd[at+k] = g.dd[at+k].Add(r[k])
@@ -140,12 +134,21 @@ func (g *Gram) Add(b *Block) {
 		}
 		for ; i <= j; i++ {
 			at := packed(i, j)
-			g.dd[at] = g.dd[at].Add(dot1(x, col(i), n))
+			g.dd[at] = g.dd[at].Add(dot1(x, b.column(i), n))
 		}
 	}
 	for a := range g.ig {
 		g.addIndex(b, a, m)
 	}
+}
+
+// column returns a dense column or right-hand side.
+func (b *Block) column(j int) vec {
+	v := vec{hi: b.Hi[j]}
+	if b.Lo != nil {
+		v.lo = b.Lo[j]
+	}
+	return v
 }
 
 func (g *Gram) weigh(x vec, w []float64, n int) vec {
@@ -160,13 +163,79 @@ func (g *Gram) weigh(x vec, w []float64, n int) vec {
 
 func (g *Gram) addIndex(b *Block, a, m int) {
 	valued := g.groups[g.ig[a]].Valued
-	idx, sums, diag, count := b.Index[a], g.sums[a], g.diag[a], g.count[a]
-	for r, l := range idx[:b.Rows] {
-		if l < 0 {
+	idx := b.Index[a][:b.Rows]
+	count := g.count[a]
+	for _, l := range idx {
+		if l >= 0 {
+			count[l]++
+		}
+	}
+	if valued || b.Weight != nil {
+		g.addWeighted(b, a, m)
+		return
+	}
+	diag := g.diag[a]
+	for _, l := range idx {
+		if l >= 0 {
+			diag[l].Hi++
+		}
+	}
+	sh, sl := g.sums[a].hi, g.sums[a].lo
+	for j := range m {
+		if j == g.ones {
+			continue // Finish takes it from the counts
+		}
+		x := b.Hi[j][:b.Rows]
+		for r, l := range idx {
+			if l < 0 {
+				continue
+			}
+			at := int(l)*m + j
+			s, e := dd.TwoSum(sh[at], x[r])
+			sh[at] = s
+			sl[at] += e
+		}
+		if b.Lo == nil || b.Lo[j] == nil {
 			continue
 		}
-		count[l]++
-		if b.Weight != nil && b.Weight[r] == 0 {
+		x = b.Lo[j][:b.Rows]
+		for r, l := range idx {
+			if l >= 0 {
+				sl[int(l)*m+j] += x[r]
+			}
+		}
+	}
+	for c := range a {
+		t := g.pair(a, c)
+		kdx := b.Index[c][:b.Rows]
+		if t.lo == nil && t.sparse == nil {
+			for r, l := range idx {
+				if k := kdx[r]; l >= 0 && k >= 0 {
+					t.hi[int(l)*t.cols+int(k)]++
+				}
+			}
+			continue
+		}
+		for r, l := range idx {
+			k := kdx[r]
+			if l < 0 || k < 0 {
+				continue
+			}
+			p := dd.DD{Hi: 1}
+			if g.groups[g.ig[c]].Valued {
+				p = b.value(c, r)
+			}
+			t.add(int(l), int(k), p)
+		}
+	}
+}
+
+// addWeighted is addIndex for rows with weights or values.
+func (g *Gram) addWeighted(b *Block, a, m int) {
+	valued := g.groups[g.ig[a]].Valued
+	sums, diag := g.sums[a], g.diag[a]
+	for r, l := range b.Index[a][:b.Rows] {
+		if l < 0 || b.Weight != nil && b.Weight[r] == 0 {
 			continue
 		}
 		v := dd.DD{Hi: 1}
@@ -177,22 +246,17 @@ func (g *Gram) addIndex(b *Block, a, m int) {
 		if b.Weight != nil {
 			wv = v.MulF(b.Weight[r])
 		}
-		unit := !valued && b.Weight == nil
-		if unit {
-			diag[l].Hi++
-		} else {
-			diag[l] = diag[l].Add(wv.Mul(v))
-		}
+		diag[l] = diag[l].Add(wv.Mul(v))
 		at := int(l) * m
 		for j := range m {
 			x := dd.DD{Hi: b.Hi[j][r]}
 			if b.Lo != nil && b.Lo[j] != nil {
 				x.Lo = b.Lo[j][r]
 			}
-			if !unit {
-				x = x.Mul(wv)
-			}
-			sums.set(at+j, sums.at(at+j).Add(x))
+			x = x.Mul(wv)
+			s, e := dd.TwoSum(sums.hi[at+j], x.Hi)
+			sums.hi[at+j] = s
+			sums.lo[at+j] += e + x.Lo
 		}
 		for c := range a {
 			k := b.Index[c][r]
@@ -204,6 +268,21 @@ func (g *Gram) addIndex(b *Block, a, m int) {
 				p = p.Mul(b.value(c, r))
 			}
 			g.pair(a, c).add(int(l), int(k), p)
+		}
+	}
+}
+
+// Finish brings the sums to their final form; nothing may be added afterwards.
+func (g *Gram) Finish() {
+	m := g.nd + g.rhs
+	for a, s := range g.sums {
+		for i := range s.hi {
+			s.hi[i], s.lo[i] = dd.TwoSum(s.hi[i], s.lo[i])
+		}
+		if g.ones >= 0 && !g.groups[g.ig[a]].Valued {
+			for l, d := range g.diag[a] {
+				s.set(l*m+g.ones, d)
+			}
 		}
 	}
 }
@@ -242,7 +321,9 @@ func (g *Gram) Merge(h *Gram) {
 			g.count[a][l] += h.count[a][l]
 		}
 		for i := range g.sums[a].hi {
-			g.sums[a].set(i, g.sums[a].at(i).Add(h.sums[a].at(i)))
+			s, e := dd.TwoSum(g.sums[a].hi[i], h.sums[a].hi[i])
+			g.sums[a].hi[i] = s
+			g.sums[a].lo[i] += e + h.sums[a].lo[i]
 		}
 	}
 	for p := range g.cross {
@@ -278,7 +359,7 @@ func (g *Gram) Small() bool {
 }
 
 // Empty returns a Gram of the same shape without rows.
-func (g *Gram) Empty() *Gram { return NewGram(g.groups, g.rhs, g.weighted) }
+func (g *Gram) Empty() *Gram { return NewGram(g.groups, g.rhs, g.ones, g.weighted) }
 
 // Finite reports whether every sum is finite.
 func (g *Gram) Finite() bool {

@@ -88,10 +88,12 @@ func dot4(a, b0, b1, b2, b3 vec, n int) (r [4]dd.DD) {
 		t2.add(x, h2[i])
 		t3.add(x, h3[i])
 	}
-	t0.c += crossLow(a, b0, n)
-	t1.c += crossLow(a, b1, n)
-	t2.c += crossLow(a, b2, n)
-	t3.c += crossLow(a, b3, n)
+	if a.lo != nil || b0.lo != nil || b1.lo != nil || b2.lo != nil || b3.lo != nil {
+		t0.c += crossLow(a, b0, n)
+		t1.c += crossLow(a, b1, n)
+		t2.c += crossLow(a, b2, n)
+		t3.c += crossLow(a, b3, n)
+	}
 	return [4]dd.DD{t0.sum(), t1.sum(), t2.sum(), t3.sum()}
 }
 
