@@ -49,18 +49,16 @@ type Half struct {
 	rest  vec
 }
 
-// Half solves Rᵀh = c over the kept columns. Estimable is the largest violation,
-// relative, among columns set aside: c is a function of the fitted values when
-// it is nil up to rounding; worst is the column in a Vec where it is found.
+// Half solves Rᵀh = c over the kept columns. c is a function of the fitted values
+// when every column set aside has the coefficient that writing it in the kept
+// ones asks for; violation is the largest departure, worst the column in a Vec
+// where it is found, −1 for none. A departure is taken relative to the terms
+// that make it up, |c_k| + ‖h‖‖x_k‖, so that it depends on the scale of no column.
 func (f *Factor) Half(c Vec) (h Half, violation float64, worst int) {
 	worst = -1
-	scale := 0.0
-	for i := range c.hi {
-		scale = math.Max(scale, math.Abs(c.hi[i]))
-	}
-	note := func(x dd.DD, at int) {
-		if v := math.Abs(x.Hi); v > violation {
-			violation, worst = v, at
+	note := func(x dd.DD, scale float64, at int) {
+		if v := math.Abs(x.Hi); v > violation*scale {
+			violation, worst = v/scale, at
 		}
 	}
 	rhs := newVec(f.q) // c of the rest less what the eliminated levels explain
@@ -71,6 +69,7 @@ func (f *Factor) Half(c Vec) (h Half, violation float64, worst int) {
 			rhs.set(f.pos[i]+j, c.at(at+j))
 		}
 	}
+	var length float64 // ‖h‖² so far
 	if f.elim >= 0 {
 		at = f.g.Offset(f.elim)
 		h.level = make([]dd.DD, len(f.d))
@@ -81,10 +80,11 @@ func (f *Factor) Half(c Vec) (h Half, violation float64, worst int) {
 				continue
 			}
 			if d.Hi <= 0 {
-				note(x, at+l)
+				note(x, math.Abs(x.Hi), at+l)
 				continue
 			}
 			h.c[l], h.level[l] = x, x.Div(d)
+			length += x.Hi * h.level[l].Hi
 			for _, e := range f.rows[l] {
 				if int(e.col) < f.q {
 					rhs.set(int(e.col), rhs.at(int(e.col)).Sub(h.level[l].Mul(e.val)))
@@ -97,15 +97,18 @@ func (f *Factor) Half(c Vec) (h Half, violation float64, worst int) {
 	for k := range f.q {
 		x := rhs.at(k).Sub(dot(f.r[k], h.rest, t))
 		if t < len(f.piv) && f.piv[t] == k {
-			h.rest.set(t, x.Div(f.r[k].at(t)))
+			x = x.Div(f.r[k].at(t))
+			h.rest.set(t, x)
+			length += x.Hi * x.Hi
 			t++
 			continue
 		}
+		if x.Hi == 0 {
+			continue
+		}
 		gi, col := f.locate(k)
-		note(x, f.g.Offset(gi)+col)
-	}
-	if scale > 0 {
-		violation /= scale
+		at := f.g.Offset(gi) + col
+		note(x, math.Abs(c.hi[at])+math.Sqrt(length*f.norm(k)), at)
 	}
 	return h, violation, worst
 }
