@@ -330,6 +330,7 @@ func TestSparseTables(t *testing.T) {
 		m2 := h.Empty()
 		q.addTo(m2, 150, n, BlockRows)
 		m.Merge(m2)
+		m.Finish()
 		c := NewFactor(m, all(3), Settings{Tol: testTol, Eliminate: true})
 		if c.Rank != a.Rank || apart(c.Residual(1, 0), exact(a.Residual(1, 0)), a.Residual(0, 0).Hi) > 1e-26 {
 			t.Errorf("merged: rank %d, residual %g", c.Rank, c.Residual(1, 0).Hi)
@@ -358,12 +359,13 @@ func TestMerge(t *testing.T) {
 	} {
 		p := s.random(r)
 		whole := NewFactor(p.gram(BlockRows), all(len(p.groups)), Settings{Tol: testTol})
-		g := NewGram(p.groups, p.rhs, p.w != nil)
+		g := p.empty()
 		for _, cut := range [][2]int{{0, 11}, {11, 12}, {12, 12}, {12, 60}} {
 			part := g.Empty()
 			p.addTo(part, cut[0], cut[1], 5)
 			g.Merge(part)
 		}
+		g.Finish()
 		f := NewFactor(g, all(len(p.groups)), Settings{Tol: testTol})
 		check(t, p, f, 1e-25)
 		if f.Rank != whole.Rank || g.Rows() != p.n {

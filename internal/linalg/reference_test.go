@@ -36,9 +36,24 @@ type problem struct {
 
 // gram adds the rows in blocks of the given size.
 func (p *problem) gram(size int) *Gram {
-	g := NewGram(p.groups, p.rhs, p.w != nil)
+	g := p.empty()
 	p.addTo(g, 0, p.n, size)
+	g.Finish()
 	return g
+}
+
+// empty returns a Gram for the problem, told of a first column of ones.
+func (p *problem) empty() *Gram {
+	ones := -1
+	if p.groups[0].Dense > 0 && p.n > 0 {
+		ones = 0
+		for i := range p.n {
+			if p.hi[0][i] != 1 || p.lo[0][i] != 0 {
+				ones = -1
+			}
+		}
+	}
+	return NewGram(p.groups, p.rhs, ones, p.w != nil)
 }
 
 func (p *problem) addTo(g *Gram, first, last, size int) {
