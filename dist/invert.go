@@ -127,11 +127,25 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		}
 		x = next
 	}
-	if positive && best <= 5e-324 {
-		// A root below the smallest denormal is 0.
-		if tail, _, _ := law.tailAt(5e-324, upper); !upper && tail > p || upper && tail < p {
-			return 0
+	// A root beyond the floats is an end of the support: 0 or infinite.
+	right := func(x float64) bool { // whether the root lies to the right of x
+		tail, logTail, _ := law.tailAt(x, upper)
+		if tail < tinyTail || p < tinyTail {
+			if tail >= tinyTail {
+				logTail = math.Log(tail)
+			}
+			return (logTail > logOf(p)) == upper
 		}
+		return (tail > p) == upper
+	}
+	switch {
+	case bestR < 1e-9:
+	case b == orderOf(hi) && right(math.MaxFloat64):
+		return hi
+	case positive && a == orderOf(lo) && !right(5e-324):
+		return lo
+	case !positive && a == orderOf(lo) && !right(-math.MaxFloat64):
+		return lo
 	}
 	return best
 }
