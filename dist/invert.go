@@ -98,7 +98,11 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 				scale = math.Abs(x)
 			}
 		}
-		step := r / (hazard * scale)
+		slope := hazard * scale
+		if !(slope > 0 && slope <= math.MaxFloat64) {
+			slope = math.NaN() // bisect
+		}
+		step := r / slope
 		if !upper {
 			step = -step
 		}
