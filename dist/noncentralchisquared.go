@@ -131,8 +131,8 @@ func (c NoncentralChiSquared) LogProb(x float64) float64 {
 
 func (c NoncentralChiSquared) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {
 	p := noncentral.AtChiSquared(c.K, c.Lambda, dd.From(x))
-	t, up := p.Tail()
-	return centralTail{t, up}.eval(upper, perX(p.Kernel(), x))
+	t, up, kernel, _ := p.All()
+	return centralTail{t, up}.eval(upper, perX(kernel, x))
 }
 
 func (c NoncentralChiSquared) support() (lo, hi float64) { return 0, math.Inf(1) }

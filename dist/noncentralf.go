@@ -64,12 +64,12 @@ func (f NoncentralF) tailKernel(x float64) (centralTail, special.Scaled) {
 		if !ok {
 			return centralTail{upper: upper}, special.Scaled{}
 		}
-		t, upper := p.Tail()
-		return centralTail{t, upper}, p.Kernel()
+		t, upper, kernel, _ := p.All()
+		return centralTail{t, upper}, kernel
 	}
 	p := noncentral.AtF(f.D1, f.D2, f.Lambda, x)
-	t, upper := p.Tail()
-	return centralTail{t, upper}, p.Kernel()
+	t, upper, kernel, _ := p.All()
+	return centralTail{t, upper}, kernel
 }
 
 // kernel returns the density of log X.
@@ -171,7 +171,17 @@ func (f NoncentralF) LogProb(x float64) float64 {
 	case x == 0:
 		return math.Log(densityAtZero(f.D1/2, 1))
 	}
-	return perX(f.kernel(x), x).Log()
+	if f.D1 == 2 {
+		if l, ok := noncentral.LogDensityTwo(f.D2, f.Lambda, x); ok {
+			return l
+		}
+	}
+	k := perX(f.kernel(x), x)
+	if l := k.Log(); l < -0.5 || l > 0.5 || math.IsInf(f.D2, 1) {
+		return l
+	}
+	p := noncentral.AtF(f.D1, f.D2, f.Lambda, x)
+	return perX(p.FullKernel(), x).Log()
 }
 
 func (f NoncentralF) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {

@@ -33,8 +33,8 @@ func NoncentralityChiSquared(k, x, survival float64) (float64, error) {
 	central := ChiSquared{k}.Survival(x)
 	return findNoncentrality(central, survival, k, x, 0, func(lambda float64) (special.Scaled, bool, special.Scaled) {
 		p := noncentral.AtChiSquared(k, lambda, dd.From(x))
-		t, upper := p.Tail()
-		return t, upper, p.Slope()
+		t, upper, _, slope := p.All()
+		return t, upper, slope
 	})
 }
 
@@ -59,14 +59,14 @@ func NoncentralityF(d1, d2, x, survival float64) (float64, error) {
 		}
 		return findNoncentrality(central, survival, d1, y.Hi, 0, func(lambda float64) (special.Scaled, bool, special.Scaled) {
 			p := noncentral.AtChiSquared(d1, lambda, y)
-			t, upper := p.Tail()
-			return t, upper, p.Slope()
+			t, upper, _, slope := p.All()
+			return t, upper, slope
 		})
 	}
 	return findNoncentrality(central, survival, d1, d1*x, d1*x*(d1*x/d2), func(lambda float64) (special.Scaled, bool, special.Scaled) {
 		p := noncentral.AtF(d1, d2, lambda, x)
-		t, upper := p.Tail()
-		return t, upper, p.Slope()
+		t, upper, _, slope := p.All()
+		return t, upper, slope
 	})
 }
 

@@ -41,8 +41,6 @@ func chi2Mixture(k, lambda float64, x dd.DD) mixture {
 		m.t0, m.end = m.c, -1
 		return m
 	}
-	m.t0 = special.GammaKernel(a, m.y)
-	m.t0.M = m.t0.M.Div(a)
 	return m
 }
 
@@ -74,36 +72,33 @@ func AtChiSquared(k, lambda float64, x dd.DD) (p ChiSquared) {
 	return p
 }
 
-// Tail returns one tail: the upper one if upper is set, and the smaller one or at
-// least one not near 1.
+// All returns one tail, the upper one if upper is set, and the smaller one or at least one not
+// near 1; the density of log X, x times that of X; and the derivative of the upper
+// tail in λ. The latter two are good for Newton steps; see Kernel.
+func (p *ChiSquared) All() (t special.Scaled, upper bool, kernel, slope special.Scaled) {
+	if p.far {
+		v := special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}
+		return v, true, v, v
+	}
+	if p.contour {
+		return p.path.result(p.x)
+	}
+	return p.mix.all(p.right)
+}
+
+// Tail returns the first two results of All.
 func (p *ChiSquared) Tail() (t special.Scaled, upper bool) {
-	switch {
-	case p.far:
-		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}, true
-	case p.contour:
-		return p.path.tail()
-	}
-	return p.mix.smaller(p.right)
+	t, upper, _, _ = p.All()
+	return t, upper
 }
 
-// Kernel returns the density of log X, x times that of X.
-func (p *ChiSquared) Kernel() special.Scaled {
-	switch {
-	case p.far:
-		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}
-	case p.contour:
-		return p.path.kernel(p.x)
+// Kernel returns the density of log X to full accuracy.
+func (p *ChiSquared) Kernel() (kernel special.Scaled) {
+	if p.mixed() {
+		return p.mix.kernel()
 	}
-	return p.mix.kernel()
+	_, _, kernel, _ = p.All()
+	return kernel
 }
 
-// Slope returns the derivative of the upper tail in λ, the density for k+2 at x.
-func (p *ChiSquared) Slope() special.Scaled {
-	switch {
-	case p.far:
-		return special.Scaled{L: dd.From(-p.x / 2), M: dd.From(1)}
-	case p.contour:
-		return p.path.slope()
-	}
-	return p.mix.slope()
-}
+func (p *ChiSquared) mixed() bool { return !p.contour && !p.far }

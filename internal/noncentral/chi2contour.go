@@ -57,30 +57,36 @@ func newChi2Path(k, lambda float64, x dd.DD, b float64) chi2Path {
 	return p
 }
 
-// tail returns the upper tail if the path runs right of the pole at u = 1,
-// else the lower one.
-func (p *chi2Path) tail() (t special.Scaled, upper bool) {
+// result returns the upper tail if the path runs right of the pole at u = 1,
+// else the lower one, the density of log X, (x/2) (1/2πi) ∮ e^φ du/u², and the
+// derivative of the upper tail in λ, (1/2πi) ∮ e^φ du/(2u).
+func (p *chi2Path) result(x float64) (t special.Scaled, upper bool, kernel, slope special.Scaled) {
 	upper = p.e >= 0
-	var sum float64
+	var st, sk, ss float64
 	d2 := p.e * p.e
 	for j := 0.5; ; j++ {
 		th := j * p.h
 		sh, ch := math.Sincos(th / 2)
-		m := 2 * p.s * sh * sh
+		sh2 := sh * sh
+		m := 2 * p.s * sh2
 		if m > cut || th > math.Pi {
 			break
 		}
 		sin := 2 * sh * ch
 		psi := p.delta*sin + p.half*sinDefect(th, sin)
 		sp, cp := math.Sincos(psi)
-		num := cp*(p.e-2*p.u*sh*sh) + p.u*sp*sin
-		sum += math.Exp(-m) * num / (d2 + 4*p.u*sh*sh)
+		f := math.Exp(-m)
+		st += f * (cp*(p.e-2*p.u*sh2) + p.u*sp*sin) / (d2 + 4*p.u*sh2)
+		sk += f * (cp*(1-2*sh2) + sp*sin)
+		ss += f * cp
 	}
-	sum *= p.h / math.Pi
+	c := p.h / math.Pi
+	st *= c
 	if !upper {
-		sum = -sum
+		st = -st
 	}
-	return special.Scaled{L: p.phi, M: dd.From(sum + poleTerm(p.eta, p.n, p.phi.Hi))}, upper
+	at := func(v float64) special.Scaled { return special.Scaled{L: p.phi, M: dd.From(v)} }
+	return at(st + poleTerm(p.eta, p.n, p.phi.Hi)), upper, at(sk * c * (x / 2 / p.u)), at(ss * c / 2)
 }
 
 // poleTerm is the part of the trapezoidal rule's error that the pole of 1/s at
@@ -92,31 +98,4 @@ func poleTerm(eta, n, phi float64) float64 {
 	}
 	e := math.Exp(-n * eta)
 	return math.Exp(-phi-n*eta) / (1 + e)
-}
-
-// turn returns (h/π) Σ e^{-M} cos(ψ + kθ) over the nodes with θ > 0.
-func (p *chi2Path) turn(k float64) float64 {
-	var sum float64
-	for j := 0.5; ; j++ {
-		th := j * p.h
-		sh, ch := math.Sincos(th / 2)
-		m := 2 * p.s * sh * sh
-		if m > cut || th > math.Pi {
-			break
-		}
-		sin := 2 * sh * ch
-		psi := p.delta*sin + p.half*sinDefect(th, sin) + k*th
-		sum += math.Exp(-m) * math.Cos(psi)
-	}
-	return sum * p.h / math.Pi
-}
-
-// kernel returns x times the density: (x/2) (1/2πi) ∮ e^φ du/u².
-func (p *chi2Path) kernel(x float64) special.Scaled {
-	return special.Scaled{L: p.phi, M: dd.From(p.turn(-1) * (x / 2 / p.u))}
-}
-
-// slope returns the derivative of the upper tail in λ: (1/2πi) ∮ e^φ du/(2u).
-func (p *chi2Path) slope() special.Scaled {
-	return special.Scaled{L: p.phi, M: dd.From(p.turn(0) / 2)}
 }

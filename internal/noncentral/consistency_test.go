@@ -82,7 +82,7 @@ func rounds(n int) int {
 
 func TestChiSquaredOtherPath(t *testing.T) {
 	r := draw{rand.New(rand.NewPCG(7, 1))}
-	var tail, kernel, slope, mix worst
+	var tail, kernel, slope, mix, quick, rough worst
 	for range rounds(20000) {
 		k, _, lambda, x := r.point()
 		x *= k
@@ -94,28 +94,39 @@ func TestChiSquaredOtherPath(t *testing.T) {
 		q := newChi2Path(k, lambda, dd.From(x), b*(1+0.3*(r.Float64()-0.5)/math.Sqrt(p.s)))
 		q.n *= 1.25
 		q.h /= 1.25
-		t1, u1 := p.tail()
-		if t2, u2 := q.tail(); u1 == u2 {
+		t1, u1, k1, s1 := p.result(x)
+		t2, u2, k2, s2 := q.result(x)
+		if u1 == u2 {
 			tail.add(distance(t1, t2), "k=%v λ=%v x=%v", k, lambda, x)
 		}
-		kernel.add(distance(p.kernel(x), q.kernel(x)), "k=%v λ=%v x=%v", k, lambda, x)
-		slope.add(distance(p.slope(), q.slope()), "k=%v λ=%v x=%v", k, lambda, x)
+		kernel.add(distance(k1, k2), "k=%v λ=%v x=%v", k, lambda, x)
+		slope.add(distance(s1, s2), "k=%v λ=%v x=%v", k, lambda, x)
 		if a+b < 2*chi2Few {
 			m := chi2Mixture(k, lambda, dd.From(x))
-			mix.add(distance(t1, m.tail(u1)), "k=%v λ=%v x=%v", k, lambda, x)
-			mix.add(distance(p.kernel(x), m.kernel()), "k=%v λ=%v x=%v", k, lambda, x)
-			mix.add(distance(p.slope(), m.slope()), "k=%v λ=%v x=%v", k, lambda, x)
+			mix.add(distance(t1, m.fullTail(u1)), "k=%v λ=%v x=%v", k, lambda, x)
+			mix.add(distance(k1, m.fullKernel()), "k=%v λ=%v x=%v", k, lambda, x)
+			mix.add(distance(s1, m.slope()), "k=%v λ=%v x=%v", k, lambda, x)
+			if v, ok := m.quickKernel(); ok {
+				quick.add(distance(k1, special.Scaled{M: v}), "k=%v λ=%v x=%v", k, lambda, x)
+			}
+			if r, ok := m.quick(u1); ok {
+				quick.add(distance(t1, special.Scaled{M: r.tail}), "k=%v λ=%v x=%v", k, lambda, x)
+				rough.add(distance(k1, special.Scaled{M: dd.From(r.kernel)}), "k=%v λ=%v x=%v", k, lambda, x)
+				rough.add(distance(s1, special.Scaled{M: dd.From(r.slope)}), "k=%v λ=%v x=%v", k, lambda, x)
+			}
 		}
 	}
 	tail.check(t, "tail", 3e-15)
 	kernel.check(t, "kernel", 3e-15)
 	slope.check(t, "slope", 3e-15)
 	mix.check(t, "mixture", 3e-15)
+	quick.check(t, "quick mixture", 4e-15)
+	rough.check(t, "quick kernel and slope", 3e-14)
 }
 
 func TestFOtherPath(t *testing.T) {
 	r := draw{rand.New(rand.NewPCG(7, 2))}
-	var tail, smallB, kernel, slope, mix worst
+	var tail, smallB, kernel, slope, mix, quick, rough worst
 	for range rounds(20000) {
 		d1, d2, lambda, x := r.point()
 		if r.IntN(2) == 0 {
@@ -131,26 +142,35 @@ func TestFOtherPath(t *testing.T) {
 		q := newFPath(d1/2, d2/2, dd.From(lambda/2), &g, c.rho*(1+shift))
 		q.n *= 1.25
 		q.h /= 1.25
-		t1, u1 := p.Tail()
-		if t2, u2 := q.tail(); u1 == u2 {
+		t1, u1, k1, s1 := p.All()
+		t2, u2, k2, s2 := q.result()
+		if u1 == u2 {
 			w := &tail
 			if d2 < 0.5 {
 				w = &smallB
 			}
 			w.add(distance(t1, t2), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
 		}
-		kernel.add(distance(p.Kernel(), q.kernel()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+		kernel.add(distance(k1, k2), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
 		w := &slope
 		if d2 < 0.5 {
 			w = &smallB
 		}
-		w.add(distance(p.Slope(), q.slope()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+		w.add(distance(s1, s2), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
 		if c.bigA+c.b*math.Log1p(c.rho) < 1.3*fFew {
 			m := fMixture(d1/2, d2/2, dd.From(lambda/2), &g)
-			mix.add(distance(p.Kernel(), m.kernel()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
-			mix.add(distance(p.Slope(), m.slope()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+			mix.add(distance(k1, m.fullKernel()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+			mix.add(distance(s1, m.slope()), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
 			if d2 >= 0.5 {
-				mix.add(distance(t1, m.tail(u1)), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+				mix.add(distance(t1, m.fullTail(u1)), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+				if v, ok := m.quickKernel(); ok {
+					quick.add(distance(k1, special.Scaled{M: v}), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+				}
+				if r, ok := m.quick(u1); ok {
+					quick.add(distance(t1, special.Scaled{M: r.tail}), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+					rough.add(distance(k1, special.Scaled{M: dd.From(r.kernel)}), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+					rough.add(distance(s1, special.Scaled{M: dd.From(r.slope)}), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+				}
 			}
 		}
 	}
@@ -160,6 +180,8 @@ func TestFOtherPath(t *testing.T) {
 	kernel.check(t, "kernel", 5e-15)
 	slope.check(t, "slope", 5e-15)
 	mix.check(t, "mixture", 5e-15)
+	quick.check(t, "quick mixture", 4e-15)
+	rough.check(t, "quick kernel and slope", 3e-14)
 }
 
 func TestTOtherSum(t *testing.T) {

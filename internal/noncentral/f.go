@@ -90,8 +90,6 @@ func fMixture(a, b float64, half dd.DD, g *fArg) mixture {
 		m.end = 1
 	default:
 		m.y1 = dd.From(1).Div(g.c1)
-		m.t0 = special.BetaKernel(da, db, m.y, m.y1)
-		m.t0.M = m.t0.M.Div(da)
 	}
 	return m
 }
@@ -129,27 +127,75 @@ func atF(d1, d2 float64, half, x dd.DD, ex int) (p F) {
 	return p
 }
 
-// Tail returns one tail: the upper one if upper is set, and the smaller one or at
-// least one not near 1.
+// All returns one tail, the upper one if upper is set, and the smaller one or at least one not
+// near 1; the density of log X, x times that of X; and the derivative of the upper
+// tail in λ. The latter two are good for Newton steps; see Kernel.
+func (p *F) All() (t special.Scaled, upper bool, kernel, slope special.Scaled) {
+	if p.contour {
+		return p.path.result()
+	}
+	return p.mix.all(p.right)
+}
+
+// Tail returns the first two results of All.
 func (p *F) Tail() (t special.Scaled, upper bool) {
-	if p.contour {
-		return p.path.tail()
-	}
-	return p.mix.smaller(p.right)
+	t, upper, _, _ = p.All()
+	return t, upper
 }
 
-// Kernel returns the density of log X, x times that of X.
-func (p *F) Kernel() special.Scaled {
-	if p.contour {
-		return p.path.kernel()
+// Kernel returns the density of log X to full accuracy.
+func (p *F) Kernel() (kernel special.Scaled) {
+	if p.mixed() {
+		return p.mix.kernel()
 	}
-	return p.mix.kernel()
+	_, _, kernel, _ = p.All()
+	return kernel
 }
 
-// Slope returns the derivative of the upper tail in λ.
-func (p *F) Slope() special.Scaled {
-	if p.contour {
-		return p.path.slope()
+func (p *F) mixed() bool { return !p.contour }
+
+// LogDensityTwo returns the logarithm of the density for d1 = 2, which rises to -λ/2 at x = 0
+// and so comes arbitrarily near 0; with c = 2x/d2 and b = d2/2 (for d2 = +Inf: bc = x) it is
+//
+//	-(b+1) log(1+c) - λ/2 + log(1 + Σ_{j>=1} (λy/2)^j (b+1)...(b+j)/(j!)²)
+//
+// without cancellation for small x and λ; ok is false elsewhere.
+func LogDensityTwo(d2, lambda, x float64) (l float64, ok bool) {
+	if !(x > 1e-280 && x < 0.5 && lambda < 0.5) {
+		return 0, false
 	}
-	return p.mix.slope()
+	half := dd.From(lambda / 2)
+	var z, p, v dd.DD // z the part of a term's quotient that does not change, v = -(b+1) log(1+c)
+	if math.IsInf(d2, 1) {
+		z, v = half.MulF(x), dd.From(-x)
+	} else {
+		c := dd.From(2 * x).DivF(d2)
+		if !(c.Hi < 1) {
+			return 0, false
+		}
+		p = dd.Sum(d2/2, 1)
+		v = dd.Log1p(c).Mul(p).Neg()
+		z = half.Mul(c).Div(c.AddF(1))
+	}
+	t, sum := dd.From(1), dd.DD{}
+	for j := 1.0; j < 60; j++ {
+		r := z
+		if p.Hi != 0 {
+			r = r.Mul(p.AddF(j - 1))
+		}
+		t = t.Mul(r).DivF(j * j)
+		sum = sum.Add(t)
+		if t.Hi < 0x1p-70*sum.Hi {
+			break
+		}
+	}
+	return v.Sub(half).Add(dd.Log1p(sum)).Float64(), t.Hi < 0x1p-60*sum.Hi || sum.Hi == 0
+}
+
+// FullKernel is Kernel with more than 60 bits where the mixture serves, for logarithms near 0.
+func (p *F) FullKernel() special.Scaled {
+	if p.mixed() {
+		return p.mix.fullKernel()
+	}
+	return p.Kernel()
 }

@@ -98,134 +98,93 @@ func circleNodes(b, rho, bigA float64) float64 {
 
 func bentNodes(b float64) float64 { return math.Sqrt(82*4*b+70*70) * 1.1 }
 
-// circleNode returns the modulus exponent, the phase, sin²(θ/2) and sin θ.
-func (p *fPath) circleNode(th float64) (m, psi, sh2, sin, q float64) {
-	sh, ch := math.Sincos(th / 2)
-	sh2 = sh * sh
-	sin = 2 * sh * ch
-	r2 := 2 * p.rho * sh2
-	m = 2*p.bigA*sh2 + p.b/2*math.Log1p(2*r2*(1+p.rho))
-	q = p.rho * sin / (1 + r2)
-	psi = p.delta*sin + p.a*sinDefect(th, sin) + p.b*(q*r2+atanDefect(q))
-	return m, psi, sh2, sin, q
-}
+// fSums are the three integrals over a path, each over e^φ(U): the tail without the pole's part, with
+// the sign of the upper one, the density of log X and the derivative of the upper tail in λ,
+//
+//	(1/2πi) ∮ e^φ du/(u(u-1)),  (1/2πi) ∮ e^φ b y du/(u(u-y)),  (1/2πi) ∮ e^φ du/(2u).
+type fSums struct{ tail, kernel, slope float64 }
 
-// bentNode returns the modulus exponent and the phase at τ, and z.
-func (p *fPath) bentNode(tau float64) (m, psi, zr, zi float64) {
-	q := tau * tau
-	r := 1 + p.rho
-	zr, zi = -q/r, 2*tau/r
-	m = p.b*(q+math.Log1p(q)) - p.delta*zr - (p.a+p.b)*(math.Log1p(2*zr+zr*zr+zi*zi)/2-zr)
-	psi = 2*p.b*atanDefect(tau) + p.delta*zi + (p.a+p.b)*(math.Atan2(zi, 1+zr)-zi)
-	return m, psi, zr, zi
-}
-
-const cut = 43 // e^-cut is beneath the accuracy of a sum
-
-func (p *fPath) tail() (t special.Scaled, upper bool) {
-	upper = p.e >= 0
-	sum := 0.0
+func (p *fPath) sums() (s fSums) {
 	if p.bent {
-		sum = p.bentTail()
-	} else {
-		sum = p.circleTail()
+		return p.bentSums()
 	}
-	if !upper {
-		sum = -sum
-	}
-	return special.Scaled{L: p.phi, M: dd.From(sum + poleTerm(p.eta, p.n, p.phi.Hi))}, upper
+	return p.circleSums()
 }
 
-func (p *fPath) circleTail() float64 {
-	sum, d2 := 0.0, p.e*p.e
+func (p *fPath) circleSums() (s fSums) {
+	d2 := p.e * p.e
 	for j := 0.5; ; j++ {
 		th := j * p.h
-		m, psi, sh2, sin, _ := p.circleNode(th)
-		if m > cut || th > math.Pi {
+		if th > math.Pi {
 			break
 		}
-		sp, cp := math.Sincos(psi)
-		sum += math.Exp(-m) * (cp*(p.e-2*p.u*sh2) + p.u*sp*sin) / (d2 + 4*p.u*sh2)
-	}
-	return sum * p.h / math.Pi
-}
-
-func (p *fPath) bentTail() float64 {
-	sum := 0.0
-	for j := 0.5; ; j++ {
-		tau, w := sinhCosh(j * p.h)
-		m, psi, zr, zi := p.bentNode(tau)
+		sh, ch := math.Sincos(th / 2)
+		sh2 := sh * sh
+		sin := 2 * sh * ch
+		r2 := 2 * p.rho * sh2
+		m := 2*p.bigA*sh2 + p.b/2*math.Log1p(2*r2*(1+p.rho))
 		if m > cut {
 			break
 		}
-		// Re of e^{iψ}(1+iτ)/((1+z)(e+Uz))
+		q := p.rho * sin / (1 + r2)
+		psi := p.delta*sin + p.a*sinDefect(th, sin) + p.b*(q*r2+atanDefect(q))
 		sp, cp := math.Sincos(psi)
-		nr, ni := cp-tau*sp, sp+tau*cp
+		f := math.Exp(-m)
+		// Re of e^{iψ}/(u-1)
+		s.tail += f * (cp*(p.e-2*p.u*sh2) + p.u*sp*sin) / (d2 + 4*p.u*sh2)
+		// Re of e^{iψ} (U-y)/(u-y)
+		wr, wi := 1-2*(1+p.rho)*sh2, (1+p.rho)*sin
+		s.kernel += f * (cp*wr + sp*wi) / (wr*wr + wi*wi)
+		s.slope += f * cp
+	}
+	c := p.h / math.Pi
+	s.tail *= c
+	s.kernel *= c * p.b * p.rho
+	s.slope *= c / 2
+	return s
+}
+
+func (p *fPath) bentSums() (s fSums) {
+	r := 1 + p.rho
+	for j := 0.5; ; j++ {
+		tau, w := sinhCosh(j * p.h)
+		q := tau * tau
+		zr, zi := -q/r, 2*tau/r
+		m := p.b*(q+math.Log1p(q)) - p.delta*zr - (p.a+p.b)*(math.Log1p(2*zr+zr*zr+zi*zi)/2-zr)
+		if m > cut {
+			break
+		}
+		psi := 2*p.b*atanDefect(tau) + p.delta*zi + (p.a+p.b)*(math.Atan2(zi, 1+zr)-zi)
+		sp, cp := math.Sincos(psi)
+		f := w * math.Exp(-m)
 		ar, ai := 1+zr, zi
+		// Re of e^{iψ}(1+iτ)/((1+z)(U-1+Uz))
+		nr, ni := cp-tau*sp, sp+tau*cp
 		br, bi := p.e+p.u*zr, p.u*zi
 		dr, di := ar*br-ai*bi, ar*bi+ai*br
-		sum += w * math.Exp(-m) * (nr*dr + ni*di) / (dr*dr + di*di)
+		s.tail += f * (nr*dr + ni*di) / (dr*dr + di*di)
+		// Re of e^{iψ}/((1+z)(1+iτ))
+		dr, di = ar-tau*ai, ai+tau*ar
+		s.kernel += f * (cp*dr + sp*di) / (dr*dr + di*di)
+		// Re of e^{iψ}(1+iτ)/(1+z)
+		s.slope += f * (nr*ar + ni*ai) / (ar*ar + ai*ai)
 	}
-	return sum * 2 * p.h / (math.Pi * (1 + p.rho))
+	c := 2 * p.h / (math.Pi * r)
+	s.tail *= c
+	s.kernel *= c * p.b * p.rho
+	s.slope *= c / 2
+	return s
 }
 
-// kernel returns x times the density of F:
-// (1/2πi) ∮ e^φ b y/(u(u-y)) du.
-func (p *fPath) kernel() special.Scaled {
-	sum := 0.0
-	if p.bent {
-		for j := 0.5; ; j++ {
-			tau, w := sinhCosh(j * p.h)
-			m, psi, zr, zi := p.bentNode(tau)
-			if m > cut {
-				break
-			}
-			// Re of e^{iψ}/((1+z)(1+iτ))
-			sp, cp := math.Sincos(psi)
-			dr, di := 1+zr-tau*zi, zi+tau*(1+zr)
-			sum += w * math.Exp(-m) * (cp*dr + sp*di) / (dr*dr + di*di)
-		}
-		sum *= 2 / (1 + p.rho)
-	} else {
-		for j := 0.5; ; j++ {
-			th := j * p.h
-			m, psi, sh2, sin, q := p.circleNode(th)
-			if m > cut || th > math.Pi {
-				break
-			}
-			arg := math.Atan2(sin, 1-2*sh2) + math.Atan(q)
-			sum += math.Exp(-m) * math.Cos(psi-arg) / math.Sqrt(1+4*p.rho*(1+p.rho)*sh2)
-		}
+// result joins the sums with the pole's part and the scale.
+func (p *fPath) result() (t special.Scaled, upper bool, kernel, slope special.Scaled) {
+	s := p.sums()
+	upper = p.e >= 0
+	if !upper {
+		s.tail = -s.tail
 	}
-	return special.Scaled{L: p.phi, M: dd.From(sum * p.h / math.Pi * p.b * p.rho)}
+	at := func(v float64) special.Scaled { return special.Scaled{L: p.phi, M: dd.From(v)} }
+	return at(s.tail + poleTerm(p.eta, p.n, p.phi.Hi)), upper, at(s.kernel), at(s.slope)
 }
 
-// slope returns the derivative of the upper tail in λ: (1/2πi) ∮ e^φ du/(2u).
-func (p *fPath) slope() special.Scaled {
-	sum := 0.0
-	if p.bent {
-		for j := 0.5; ; j++ {
-			tau, w := sinhCosh(j * p.h)
-			m, psi, zr, zi := p.bentNode(tau)
-			if m > cut {
-				break
-			}
-			// Re of e^{iψ}(1+iτ)/(1+z)
-			sp, cp := math.Sincos(psi)
-			nr, ni := cp-tau*sp, sp+tau*cp
-			dr, di := 1+zr, zi
-			sum += w * math.Exp(-m) * (nr*dr + ni*di) / (dr*dr + di*di)
-		}
-		sum *= 2 / (1 + p.rho)
-	} else {
-		for j := 0.5; ; j++ {
-			th := j * p.h
-			m, psi, _, _, _ := p.circleNode(th)
-			if m > cut || th > math.Pi {
-				break
-			}
-			sum += math.Exp(-m) * math.Cos(psi)
-		}
-	}
-	return special.Scaled{L: p.phi, M: dd.From(sum * p.h / (2 * math.Pi))}
-}
+const cut = 43 // e^-cut is beneath the accuracy of a sum

@@ -154,7 +154,7 @@ type mixture struct {
 	a, b float64
 	half dd.DD          // λ/2
 	y1   dd.DD          // 1-y, for F
-	t0   special.Scaled // T_0
+	t0   special.Scaled // T_0, see first
 	end  int            // -1, +1: y is at 0 or 1 to all digits, the central tail that is not 1 is c
 	c    special.Scaled
 }
@@ -189,14 +189,13 @@ func (m *mixture) lowerRatio(j int) dd.DD {
 	return over(c, m.t0)
 }
 
-func (m *mixture) tail(upper bool) special.Scaled {
-	var s dd.DD
+// fullTail returns a tail without the quick form.
+func (m *mixture) fullTail(upper bool) special.Scaled {
+	m.first()
 	if upper {
-		s = upperSum(&m.drops, m.half, m.upperRatio())
-	} else {
-		s = m.lowerSum()
+		return m.scaled(upperSum(&m.drops, m.half, m.upperRatio()))
 	}
-	return m.scaled(s)
+	return m.scaled(m.lowerSum())
 }
 
 // scaled returns s T_0 w_0.
@@ -204,22 +203,52 @@ func (m *mixture) scaled(s dd.DD) special.Scaled {
 	return special.Scaled{L: m.t0.L.Sub(m.half), M: m.t0.M.Mul(s)}
 }
 
+// first sets T_0 in full.
+func (m *mixture) first() {
+	switch {
+	case m.end != 0 || m.t0.M.Hi != 0:
+		return
+	case m.beta:
+		m.t0 = special.BetaKernel(dd.From(m.a), dd.From(m.b), m.y, m.y1)
+	default:
+		m.t0 = special.GammaKernel(dd.From(m.a), m.y)
+	}
+	m.t0.M = m.t0.M.DivF(m.a)
+}
+
 // kernel returns the density of log X.
 func (m *mixture) kernel() special.Scaled {
+	if v, ok := m.quickKernel(); ok {
+		return special.Scaled{M: v}
+	}
+	return m.fullKernel()
+}
+
+func (m *mixture) fullKernel() special.Scaled {
+	m.first()
 	return m.scaled(kernelSum(&m.drops, m.a, m.half).MulF(m.a))
 }
 
 // slope returns Σ w_j T_j/2, the derivative of the upper tail in λ.
 func (m *mixture) slope() special.Scaled {
+	m.first()
 	return m.scaled(dropSum(&m.drops, m.half).MulF(0.5))
 }
 
-// smaller returns the tail asked for, or the other one if that is large.
-func (m *mixture) smaller(upper bool) (special.Scaled, bool) {
-	t := m.tail(upper)
-	if t.L.Hi > -8 && t.Float64() > 0.6 {
+// all returns the wanted tail or, if that is large, the other one, with kernel and slope.
+func (m *mixture) all(upper bool) (t special.Scaled, up bool, kernel, slope special.Scaled) {
+	for range 2 {
+		r, ok := m.quick(upper)
+		if ok {
+			t = special.Scaled{M: r.tail}
+			kernel, slope = special.Scaled{M: dd.From(r.kernel)}, special.Scaled{M: dd.From(r.slope)}
+		} else {
+			t, kernel, slope = m.fullTail(upper), m.kernel(), m.slope()
+		}
+		if !(t.L.Hi > -8 && t.DD().Hi > 0.6) {
+			return t, upper, kernel, slope
+		}
 		upper = !upper
-		t = m.tail(upper)
 	}
-	return t, upper
+	return t, !upper, kernel, slope
 }
