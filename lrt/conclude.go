@@ -19,7 +19,7 @@ func Conclude(ctx context.Context, c Comparison, p Pair, s *Settings) (Result, e
 	if p.Linear.M > 0 {
 		err = r.concludeLinear()
 	} else {
-		err = r.concludeLikelihood(ctx)
+		err = r.concludeLikelihood(ctx, s)
 	}
 	if err != nil {
 		return Result{}, c.fail("", err)
@@ -101,7 +101,7 @@ func chiSquared(x, df float64) Test {
 }
 
 // concludeLikelihood compares two log likelihoods.
-func (r *Result) concludeLikelihood(ctx context.Context) error {
+func (r *Result) concludeLikelihood(ctx context.Context, s *Settings) error {
 	if r.Pair.Full.Criterion.Kind == QuasiLikelihood {
 		return fmt.Errorf("%w: a quasi-likelihood has no λ", ErrDifferentCriterion)
 	}
@@ -111,7 +111,21 @@ func (r *Result) concludeLikelihood(ctx context.Context) error {
 	r.LogLambda = math.Min(r.Pair.Restricted.LogLikelihood-r.Pair.Full.LogLikelihood, 0)
 	r.Lambda = math.Exp(r.LogLambda)
 	r.Statistic = math.Abs(2 * r.LogLambda)
-	r.ChiSquared = chiSquared(r.Statistic, r.Pair.DF)
+	p := r.Pair
+	switch {
+	case p.Irregular != "":
+		r.ChiSquared = Test{Name: "χ²", Statistic: r.Statistic, P: nan, LogP: nan, Why: p.Irregular}
+	case p.Cone != nil:
+		r.ChiSquared = Test{Name: "χ²", Statistic: r.Statistic, P: nan, LogP: nan,
+			Why: "inequalities take part: the law is a mixture"}
+		t, err := p.Cone.test(ctx, r.Statistic, s)
+		if err != nil {
+			return err
+		}
+		r.Boundary = t
+	default:
+		r.ChiSquared = chiSquared(r.Statistic, p.DF)
+	}
 	if e, ok := r.Comparison.Full.(ExactReferrer); ok {
 		t, err := e.ReferExact(ctx, r.Comparison, r.Pair)
 		if err != nil {
@@ -126,6 +140,9 @@ func (r *Result) concludeLikelihood(ctx context.Context) error {
 // before asymptotic.
 func (r *Result) recommend() {
 	best := r.ChiSquared
+	if r.Boundary.Kind != None {
+		best = r.Boundary
+	}
 	for _, k := range []Kind{Approximate, Simulated, Exact} {
 		for i := len(r.Others) - 1; i >= 0; i-- {
 			if r.Others[i].Kind == k {

@@ -141,7 +141,12 @@ func (c *coordinates) point(u, x []float64) bool {
 		v := c.origin[k]
 		if j := c.single[k]; j >= 0 {
 			v += b[j] * c.z[j]
-			v = math.Min(math.Max(v, c.lo[k]), c.hi[k]) // rounding
+			if v < c.lo[k] || v > c.hi[k] {
+				if c.links[j].kind == linkIdentity {
+					return false
+				}
+				v = math.Min(math.Max(v, c.lo[k]), c.hi[k]) // rounding
+			}
 		} else {
 			for j, w := range b {
 				if w != 0 {

@@ -31,6 +31,9 @@ func (d *Declared) freedom(ctx context.Context, small *Declared, p *Pair) error 
 			p.Warnings = append(p.Warnings, Warning{"irregular", p.Irregular})
 		}
 	}
+	if err := d.cone(ctx, small, p); err != nil {
+		return err
+	}
 	return checkPair(*p)
 }
 

@@ -23,6 +23,10 @@ type Pair struct {
 	// against one.
 	Irregular string
 
+	// Cone is set where inequalities take part, so that the law of −2 log λ is a
+	// mixture.
+	Cone *Cone
+
 	Linear      Linear
 	Certificate *Certificate
 	Warnings    []Warning

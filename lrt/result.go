@@ -45,6 +45,8 @@ type Test struct {
 	Law       dist.Law // nil when p comes from draws
 	P, LogP   float64  // P may underflow to 0, LogP does not
 	Why       string   // why this kind, or why there is no test
+	// Simulation is what a simulated p rests on; nil elsewhere.
+	Simulation *Simulation
 }
 
 // Result answers a Comparison.
@@ -59,6 +61,9 @@ type Result struct {
 	// ChiSquared refers −2 log λ to χ² with Pair.DF degrees of freedom; it
 	// holds as the data grow. TrueSize tells what it is worth here.
 	ChiSquared Test
+	// Boundary refers −2 log λ to the mixture of χ² laws that holds where
+	// parameters are tested at the end of their range; ChiSquared is absent then.
+	Boundary Test
 	// Exact is the exact test where one exists: F for linear spaces with unknown
 	// variance, χ² with known variance, or what the space proves about itself.
 	// Where F is not certified its Kind is Approximate and Why says what failed.
@@ -81,9 +86,12 @@ func (r Result) Test() Test {
 		return r.Exact
 	}
 	for _, t := range r.Others {
-		if t.Kind == r.Recommended {
+		if t.Kind == r.Recommended && t.Kind != Asymptotic {
 			return t
 		}
+	}
+	if r.Boundary.Kind != None {
+		return r.Boundary
 	}
 	return r.ChiSquared
 }
@@ -139,7 +147,7 @@ func (r Result) String() string {
 		}
 		b.WriteByte('\n')
 	}
-	for _, t := range append([]Test{r.Exact}, r.Others...) {
+	for _, t := range append([]Test{r.Boundary, r.Exact}, r.Others...) {
 		if t.Kind == None {
 			continue
 		}

@@ -188,9 +188,9 @@ func (q SizeSearch) Solve(ctx context.Context) (Size, error) {
 	}
 }
 
-// around looks at every cheaper neighbour of n: one replicate less, or with
-// Free one unit less in a group, or a unit moved to a cheaper group. It returns
-// the cheapest that keeps the power, else all of them.
+// around looks at every cheaper neighbour of n: one replicate less, or with Free
+// up to four units less in a group, some of them replaced by up to twelve in
+// another. It returns the cheapest that keeps the power, else all of them.
 func (s *sizer) around(n []int, fewer bool) (better []int, cheaper []Neighbour, err error) {
 	var try [][]int
 	if !s.Free {
@@ -202,28 +202,27 @@ func (s *sizer) around(n []int, fewer bool) (better []int, cheaper []Neighbour, 
 			try = append(try, m)
 		}
 	} else {
-		for i := range n {
-			least := 1
+		least := func(i int) int {
 			if s.Least != nil {
-				least = s.Least[i]
+				return s.Least[i]
 			}
-			if n[i] <= least {
-				continue
-			}
-			m := append([]int(nil), n...)
-			m[i]--
-			try = append(try, m)
-			for j := range n {
-				if j == i {
-					continue
-				}
-				k := append([]int(nil), m...)
-				k[j]++
-				try = append(try, k)
-				if n[i]-2 >= least { // two units given for one where that is where they count
-					k := append([]int(nil), k...)
-					k[i]--
-					try = append(try, k)
+			return 1
+		}
+		const wide = 4
+		for i := range n {
+			for d := 1; d <= wide && n[i]-d >= least(i); d++ {
+				m := append([]int(nil), n...)
+				m[i] -= d
+				try = append(try, m)
+				for j := range n {
+					for e := 1; e <= 3*wide && j != i; e++ {
+						k := append([]int(nil), m...)
+						k[j] += e
+						if s.cost(k) >= s.cost(n) {
+							break
+						}
+						try = append(try, k)
+					}
 				}
 			}
 		}
