@@ -3,6 +3,7 @@ package anova
 import (
 	"errors"
 	"math"
+	"strings"
 
 	"subsume.example/lrt"
 )
@@ -97,15 +98,23 @@ func (r Row) Test() lrt.Test {
 }
 
 // Hypothesis returns the null in words: equations between coefficients where
-// the restricted space was made by them, else the model the mean follows.
+// the restricted space is the full one with equations, else the two spaces.
 func (r Row) Hypothesis() string {
-	if k := r.pair.Certificate; k != nil {
-		return k.Hypothesis
+	restricted, full := r.Spaces()
+	if eqs, ok := equations(restricted, full); ok {
+		return eqs
 	}
-	if s, ok := r.comparison.Restricted.(interface{ String() string }); ok {
-		return s.String()
+	return restricted + ", against " + full
+}
+
+// equations returns what the name of a restricted space adds to that of the full one.
+func equations(restricted, full string) (string, bool) {
+	for _, sep := range []string{", where ", " and "} {
+		if eqs, ok := strings.CutPrefix(restricted, full+sep); ok {
+			return eqs, true
+		}
 	}
-	return ""
+	return "", false
 }
 
 // Spaces names the restricted and the full space.

@@ -202,7 +202,7 @@ func (t Table) strata() bool {
 func (r Row) question(shared bool) string {
 	restricted, full := bare(r.comparison.Restricted), bare(r.comparison.Full)
 	s := r.Name() + ": "
-	if _, eqs, ok := strings.Cut(restricted, ", where "); ok && r.pair.Certificate != nil {
+	if eqs, ok := equations(restricted, full); ok {
 		s += "hypothesis " + firstEquation(eqs) + " inside " + clip(full)
 	} else {
 		s += clip(restricted) + " inside " + clip(full)
