@@ -26,3 +26,17 @@ func ExampleMaximumModulus() {
 	// Output:
 	// 3.094500
 }
+
+// All ten comparisons of five glazes at once.
+func ExampleStudentizedRange_Survivals() {
+	law := dist.StudentizedRange{K: 5, Nu: 15}
+	for _, p := range law.Survivals(nil, []float64{4.9, 4.1, 3.2, 1.0, 0.3}) {
+		fmt.Printf("%.4f\n", p)
+	}
+	// Output:
+	// 0.0245
+	// 0.0708
+	// 0.2104
+	// 0.9517
+	// 0.9995
+}

@@ -47,10 +47,18 @@ type unitLaw struct {
 	power  float64 // P(W <= w) ~ w^power at 0
 	step   float64 // largest step in log w that resolves the law
 	inner  float64 // step of the inner lattice
+	cells  *cells  // interpolated tails of a batch, nil otherwise
 }
 
 // tails evaluates the law at w > 0; the density only if asked for.
 func (u *unitLaw) tails(w float64, density bool) unitTails {
+	if u.cells != nil && !density {
+		return u.cells.at(u, w)
+	}
+	return u.direct(w, density)
+}
+
+func (u *unitLaw) direct(w float64, density bool) unitTails {
 	switch u.kind {
 	case unitRange:
 		if u.n == 1 {
