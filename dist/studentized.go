@@ -151,8 +151,8 @@ func (s *studentized) mode(u *unitLaw, q float64, want wanted) float64 {
 	edge := math.Log(u.middle) - logOf(q)
 	// Beyond the middle of W the integrand goes like nu v - (nu + c q²)/2 e^(2v).
 	hi := 0.0
-	if r := u.quad() * q * q / s.nu; math.IsInf(r, 0) {
-		hi = 0.5*(math.Log(s.nu)-math.Log(u.quad())) - logOf(q)
+	if r := u.quad * q * q / s.nu; math.IsInf(r, 0) {
+		hi = 0.5*(math.Log(s.nu)-math.Log(u.quad)) - logOf(q)
 	} else {
 		hi = -0.5 * math.Log1p(r)
 	}
@@ -173,26 +173,35 @@ func (s *studentized) mode(u *unitLaw, q float64, want wanted) float64 {
 	return math.Max(hi, math.Min(lo, edge))
 }
 
-// quad is c in P(W > w) ~ exp(-c w²/2).
-func (u *unitLaw) quad() float64 {
-	if u.kind == unitRange {
-		return 0.5
-	}
-	return 1
-}
+// flat says how far to the left of a node the terms are a geometric series.
+type flat uint8
 
-// term returns the integrand at node j, and whether to the left of it the
-// rest of the upper tail is a geometric series.
-func (s *studentized) term(u *unitLaw, l *lattice, j int, want wanted, c *nodes) (t tail, flat bool) {
+const (
+	notFlat     flat = iota
+	flatToInf        // the tail of W is 1 as long as w >= u.inf
+	flatForever      // the tail of W is constant from here on
+)
+
+// term returns the integrand at node j, and whether the terms to the left of it
+// are a geometric series, because the tail of W is constant and e^(2v) has vanished.
+func (s *studentized) term(u *unitLaw, l *lattice, j int, want wanted, c *nodes) (t tail, f flat) {
 	d := l.step * float64(j)
 	v := l.v0 + d
 	w := l.w0 * math.Exp(d)
 	e := -s.nu * chiCurve(v)
 	switch {
-	case want == wantUpper && w <= u.one:
-		return tail{1, e}, s.nu*math.Exp(2*v) < 1e-17
-	case want == wantLower && w >= u.inf:
-		return tail{1, e}, s.nu*math.Exp(2*v) < 1e-17
+	case w <= u.one && want == wantUpper:
+		t, f = tail{u.base, e}, flatForever
+	case w <= u.one && want == wantLower && u.base < 1:
+		t, f = tail{1 - u.base, e}, flatForever
+	case w >= u.inf && want == wantLower:
+		t, f = tail{1, e}, flatToInf
+	}
+	if f != notFlat {
+		if s.nu*math.Exp(2*v) >= 1e-17 {
+			f = notFlat
+		}
+		return t, f
 	}
 	var all unitTails
 	if c != nil {
@@ -210,7 +219,7 @@ func (s *studentized) term(u *unitLaw, l *lattice, j int, want wanted, c *nodes)
 		t.mant *= w
 	}
 	t.log += e
-	return t, false
+	return t, notFlat
 }
 
 // sum walks the lattice from near node j. ok is false when even and odd nodes
@@ -249,11 +258,11 @@ func (s *studentized) sum(u *unitLaw, l *lattice, j int, want wanted, c *nodes) 
 			t, flat := s.term(u, l, i, want, c)
 			x := t.mant * math.Exp(t.log-best)
 			acc[i&1] += x
-			if flat && dir < 0 { // x (r + r² + ... r^m), r = exp(-nu h), m even or infinite
+			if flat != notFlat && dir < 0 { // x (r + r² + ... r^m), r = exp(-nu h), m even or infinite
 				r := math.Exp(-s.nu * l.step)
 				f := x * r / -math.Expm1(-2*s.nu*l.step)
 				m := math.Inf(1)
-				if want == wantLower { // up to where the lower tail of W leaves 1
+				if flat == flatToInf { // up to where the lower tail of W leaves 1
 					m = 2 * math.Floor((logRatio(l.w0, u.inf)/l.step+float64(i))/2)
 				}
 				if m > 0 {

@@ -51,7 +51,11 @@ func (l *studentizedLaw) direct(x float64, want wanted, c *nodes) tail {
 	}
 	shift := 0.0
 	if x < tinyX && want != wantUpper {
-		shift = l.u.power * (logOf(x) - math.Log(tinyX))
+		power := l.u.power
+		if power == 0 && want == wantDensity {
+			power = 1
+		}
+		shift = power * (logOf(x) - math.Log(tinyX))
 		x = tinyX
 		c = nil
 	}
@@ -186,10 +190,11 @@ func (l *studentizedLaw) solve(lp float64, want wanted) float64 {
 			if math.Abs(dy) < 1e-13 {
 				return x
 			}
-			next = math.Sqrt(lo) * math.Sqrt(hi)
-			if !(next > lo && next < hi) {
+			a, b := orderOf(lo), orderOf(hi)
+			if b-a <= 1 {
 				return x
 			}
+			next = fromOrder(a + (b-a)/2)
 		}
 		if math.Abs(dy) < 1e-9 {
 			return next
@@ -207,10 +212,13 @@ func (l *studentizedLaw) guess(lp float64, want wanted) float64 {
 		return l.half
 	}
 	if want == wantLower {
+		if l.u.power == 0 {
+			return l.half - 1
+		}
 		return l.half - g/l.u.power
 	}
 	m2 := math.Exp(2 * l.half)
-	c := l.u.quad()
+	c := l.u.quad
 	if math.IsInf(l.s.nu, 1) {
 		return 0.5 * math.Log(m2+2*g/c)
 	}
@@ -268,11 +276,16 @@ func (l *studentizedLaw) variance() float64 {
 		return math.Inf(1)
 	}
 	m1, m2 := l.u.moments()
+	return studentizedVariance(m1, m2, nu)
+}
+
+// studentizedVariance is m2 nu/(nu-2) - (m1 E 1/s)², nu > 2, in parts that do
+// not cancel further than m2 - m1² does.
+func studentizedVariance(m1, m2, nu float64) float64 {
 	if math.IsInf(nu, 1) {
 		return m2 - m1*m1
 	}
 	c := chiMoment(nu, -1)
-	// m2 nu/(nu-2) - m1² c², in parts that do not cancel further.
 	return (m2 - m1*m1) + 2*m2/(nu-2) - m1*m1*(c-1)*(c+1)
 }
 

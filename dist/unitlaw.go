@@ -33,6 +33,8 @@ type unitKind uint8
 const (
 	unitRange   unitKind = iota // range of n+1 standard normals
 	unitModulus                 // largest modulus of n+1 standard normals
+	unitLargest                 // largest of correlated normals, or their largest modulus
+	unitBelow                   // minus the largest of correlated normals
 )
 
 // unitLaw is the law of a positive statistic W of normals with known scale,
@@ -42,12 +44,20 @@ type unitLaw struct {
 	kind   unitKind
 	n      int     // k - 1
 	middle float64 // near the median: below it the lower tail is summed, above it the upper one
-	one    float64 // below it P(W > w) = 1 to within 1e-18
+	one    float64 // below it the tails are constant to within 1e-18
 	inf    float64 // above it P(W <= w) = 1 to within 1e-18
 	power  float64 // P(W <= w) ~ w^power at 0
 	step   float64 // largest step in log w that resolves the law
 	inner  float64 // step of the inner lattice
 	cells  *cells  // interpolated tails of a batch, nil otherwise
+
+	quad float64 // c in P(W > w) ~ exp(-c w²/2)
+	// Below one, P(W > w) is base and P(W <= w) is 1-base: 1 and 0 unless W may be
+	// negative and only its positive part is looked at.
+	base    float64
+	linear  float64 // below it the tails are linear, with slope as the density
+	slope   float64
+	product product
 }
 
 // tails evaluates the law at w > 0; the density only if asked for.
@@ -65,9 +75,10 @@ func (u *unitLaw) direct(w float64, density bool) unitTails {
 			return rangeOfTwo(w)
 		}
 		return u.rangeTails(w, density)
-	default:
+	case unitModulus:
 		return u.modulusTails(w)
 	}
+	return u.productTails(w, density)
 }
 
 // newUnitRange prepares the range of k normals.
@@ -76,7 +87,7 @@ func newUnitRange(k int) unitLaw {
 	n := kf - 1
 	// The largest and the smallest are nearly independent, so the median of
 	// the range is about twice the point where Φ^k = 0.6; only speed depends on it.
-	u := unitLaw{kind: unitRange, n: k - 1, power: n}
+	u := unitLaw{kind: unitRange, n: k - 1, power: n, quad: 0.5, base: 1}
 	u.middle = 2 * special.NormalUpperQuantile(-math.Expm1(math.Log(0.55)/kf))
 	if k == 2 {
 		u.middle = 0.95
@@ -377,7 +388,7 @@ func powerSums(x1, x2, d float64, n int) (s1, s2, dn float64) {
 // newUnitModulus prepares the largest modulus of k normals.
 func newUnitModulus(k int) unitLaw {
 	kf := float64(k)
-	u := unitLaw{kind: unitModulus, n: k - 1, power: kf}
+	u := unitLaw{kind: unitModulus, n: k - 1, power: kf, quad: 1, base: 1}
 	u.middle = special.NormalUpperQuantile(-0.5 * math.Expm1(-math.Ln2/kf))
 	c := math.Exp(-41.5 / kf)
 	u.one = math.Min(special.NormalUpperQuantile(0.5-0.5*c), c*math.Sqrt(math.Pi/2))

@@ -140,24 +140,14 @@ var (
 // NormalBetween returns P(a < Z <= b) for a <= b with relative accuracy: also
 // when the two are close together or far out on the same side. It is NaN for
 // a > b.
-//
-// A short interval is integrated about its middle m, 2 φ(m) ∫ cosh(m x)
-// exp(-x²/2) dx by the eight-point Gauss-Legendre rule; otherwise the tails
-// differ by a factor of at least e^-1 and their difference is safe.
 func NormalBetween(a, b float64) float64 {
 	if !(a <= b) {
 		return math.NaN()
 	}
 	w := b - a
 	if m := a + 0.5*w; w*math.Max(1, math.Abs(m)) <= 1 {
-		h := 0.5 * w
-		e := (a - m) + h // what rounding took from the middle
-		s := 0.0
-		for i, x := range gauss8x {
-			x *= h
-			s += 2 * gauss8w[i] * math.Exp(-0.5*x*x) * math.Cosh(m*x)
-		}
-		return NormalDensity(m) * (1 - m*e) * h * s
+		e := (a - m) + 0.5*w // what rounding took from the middle
+		return NormalDensity(m) * (1 - m*e) * w * narrow(m, 0.5*w)
 	}
 	switch {
 	case a >= 0:
@@ -166,6 +156,36 @@ func NormalBetween(a, b float64) float64 {
 		return NormalUpper(-b) - NormalUpper(-a)
 	}
 	return NormalCentral(b) - NormalCentral(a)
+}
+
+// narrow returns P(|Z-m| < h) / (2 h φ(m)) for h max(1, |m|) <= 1/2: the mean of
+// cosh(m x) exp(-x²/2) over |x| < h by the eight-point Gauss-Legendre rule.
+// Wider intervals need no such care: their tails differ by a factor of at
+// least e^-1, and the difference of those is safe.
+func narrow(m, h float64) float64 {
+	if h*math.Max(1, math.Abs(m)) < 1e-8 {
+		return 1
+	}
+	s := 0.0
+	for i, x := range gauss8x {
+		x *= h
+		s += gauss8w[i] * math.Exp(-0.5*x*x) * math.Cosh(m*x)
+	}
+	return s
+}
+
+// NormalAround returns log P(|Z-m| < h) for h > 0, however small h or the
+// probability.
+func NormalAround(m, h float64) float64 {
+	m = math.Abs(m)
+	if h*math.Max(1, m) <= 0.5 {
+		return NormalLogDensity(m) + math.Log(2*h*narrow(m, h))
+	}
+	if m < h {
+		return math.Log1p(-(NormalUpper(m+h) + NormalUpper(h-m)))
+	}
+	l := NormalLogUpper(m - h)
+	return l + math.Log1p(-math.Exp(NormalLogUpper(m+h)-l))
 }
 
 // NormalUpperQuantile returns the x with Q(x) = q: +Inf at 0, -Inf at 1, NaN
