@@ -1,7 +1,13 @@
 // Command accuracy prints how far the laws of package dist are from
-// high-precision reference values. Run it at the root of the repository:
+// high-precision reference values, gonum's laws beside them on the same rows, and
+// how long the laws take. Run it at the root of the repository:
 //
 //	go run ./internal/cmd/accuracy
+//
+// Errors are relative. "tail" is the smaller tail of each row, "other" the larger;
+// "everyday" takes rows whose degrees of freedom lie in 0.5 to 1e4 (noncentrality up to 1e4) and
+// whose smaller tail is at least 1e-10. Values below the normal range are judged by
+// their logarithms.
 package main
 
 import (
@@ -10,6 +16,7 @@ import (
 	"fmt"
 	"io/fs"
 	"log"
+	"math"
 	"os"
 	"text/tabwriter"
 
@@ -20,16 +27,41 @@ func main() {
 	log.SetFlags(0)
 	dir := flag.String("dir", "dist/testdata", "directory of the reference tables")
 	worst := flag.Bool("worst", false, "print the worst row of each line")
+	over := flag.Float64("over", 1e-12, "print every row of our laws with a larger error, and its conditioning")
+	speed := flag.Bool("speed", true, "time the laws")
 	flag.Parse()
 
-	w := tabwriter.NewWriter(os.Stdout, 0, 0, 2, ' ', tabwriter.AlignRight)
-	fmt.Fprintln(w, "table\tvalue\trows\tmedian\tmax everyday\tmax\t> 1e-12\tnot finite\t")
 	inverse, err := accuracy.LoadInverse(*dir)
 	if err != nil {
 		log.Fatal(err)
 	}
-	for _, t := range accuracy.Tables {
-		rows, err := accuracy.Load(*dir, t)
+	w := tabwriter.NewWriter(os.Stdout, 0, 0, 2, ' ', tabwriter.AlignRight)
+	fmt.Fprint(w, "Errors of package dist\n\n", head)
+	failing := tables(w, *dir, accuracy.Tables, inverse, *worst, *over)
+	if rs, err := accuracy.MeasureFinders(*dir); err == nil {
+		line(w, "ncinv", "lambda", rs, *worst)
+	}
+	w.Flush()
+	if len(failing) > 0 {
+		fmt.Printf("\nRows above %g, with |x density/tail|\n\n", *over)
+		for _, r := range failing {
+			fmt.Printf("row %d %v x = %v: %s = %v, want %s: error %.2g, conditioning %.2g\n", r.Row.Line, r.Row.P, r.Row.X, r.What, r.Got, r.Want, r.Err, r.Conditioning)
+		}
+	}
+	fmt.Fprint(w, "\nErrors of gonum v0.17.0 on the same rows\n\n", head)
+	tables(w, *dir, accuracy.Peers, nil, false, math.Inf(1))
+	w.Flush()
+	if *speed {
+		times(w)
+	}
+}
+
+const head = "table\tvalue\trows\tmedian\tmax everyday\tmax\t> 1e-12\tnot finite\t\n"
+
+// tables prints one line for each kind of value and returns the rows above the limit.
+func tables(w *tabwriter.Writer, dir string, ts []accuracy.Table, inverse []accuracy.InverseRow, worst bool, over float64) (failing []accuracy.Result) {
+	for _, t := range ts {
+		rows, err := accuracy.Load(dir, t)
 		if errors.Is(err, fs.ErrNotExist) {
 			continue // another directory may hold only some of the tables
 		}
@@ -42,11 +74,49 @@ func main() {
 			if len(m[kind]) == 0 {
 				continue
 			}
-			s := accuracy.Summarize(m[kind])
-			fmt.Fprintf(w, "%s\t%s\t%d\t%.1e\t%.1e\t%.1e\t%d\t%d\t\n", t.File, kind, s.N, s.Median, s.MaxEveryday, s.Max, s.Above12, s.NotFinite)
-			if *worst {
-				fmt.Fprintf(w, "\t%v x=%v %s got %v want %.12s\t\n", s.Worst.Row.P, s.Worst.Row.X, s.Worst.What, s.Worst.Got, s.Worst.Want)
+			line(w, t.File, kind, m[kind], worst)
+			for _, r := range m[kind] {
+				if !(r.Err <= over) {
+					failing = append(failing, r)
+				}
 			}
+		}
+	}
+	return failing
+}
+
+func line(w *tabwriter.Writer, table, kind string, rs []accuracy.Result, worst bool) {
+	s := accuracy.Summarize(rs)
+	day := "-"
+	if s.Everyday > 0 {
+		day = fmt.Sprintf("%.1e", s.MaxEveryday)
+	}
+	fmt.Fprintf(w, "%s\t%s\t%d\t%.1e\t%s\t%.1e\t%d\t%d\t", table, kind, s.N, s.Median, day, s.Max, s.Above12, s.NotFinite)
+	if worst {
+		fmt.Fprintf(w, "worst: %v x = %v, %s = %v, want %.19s\t", s.Worst.Row.P, s.Worst.Row.X, s.Worst.What, s.Worst.Got, s.Worst.Want)
+	}
+	fmt.Fprintln(w)
+}
+
+// times prints nanoseconds a call, the goal re-based by math.Exp on this machine, and gonum's time and
+// relative difference at the same point.
+func times(w *tabwriter.Writer) {
+	const ms = 20
+	erfc := accuracy.Nanoseconds(math.Erfc, 0.1, ms)
+	exp := accuracy.Nanoseconds(math.Exp, -3.3, ms)
+	fmt.Printf("\nTimes on this machine, where math.Erfc(0.1) takes %.1f ns and math.Exp(-3.3) %.1f ns\n(goals are for 5.3 ns and re-based here)\n\n", erfc, exp)
+	fmt.Fprintln(w, "call\tpoint\tx\tns\tgoal\tgonum ns\tgonum's error\t")
+	for _, s := range accuracy.Speeds() {
+		for _, p := range s.Points {
+			goal, peer, diff := "-", "-", "-"
+			if p.Goal > 0 {
+				goal = fmt.Sprintf("%.0f", p.Goal*exp/5.3)
+			}
+			if s.Peer != nil {
+				peer = fmt.Sprintf("%.0f", accuracy.Nanoseconds(s.Peer, p.X, ms))
+				diff = fmt.Sprintf("%.1e", math.Abs(s.Peer(p.X)/s.F(p.X)-1))
+			}
+			fmt.Fprintf(w, "%s\t%s\t%.4g\t%.0f\t%s\t%s\t%s\t\n", s.Name, p.Name, p.X, accuracy.Nanoseconds(s.F, p.X, ms), goal, peer, diff)
 		}
 	}
 	w.Flush()
