@@ -14,6 +14,9 @@ import (
 // 40 sqrt(a) 2^-66 < 2^-56.
 const quickMax = 1000
 
+// quickLarge bounds the larger shape parameter of the beta law there.
+const quickLarge = 1e13
+
 // fractionMax bounds the levels of a continued fraction.
 const fractionMax = 128
 

@@ -68,6 +68,12 @@ func TestQuickBeta(t *testing.T) {
 	worst, answered, n := 0.0, 0, 30000
 	for range n {
 		a, b := shape(r), shape(r)
+		switch r.IntN(4) {
+		case 0:
+			a = logUniform(r, 1000, 1e12)
+		case 1:
+			b = logUniform(r, 1000, 1e12)
+		}
 		s := a + b
 		x := a/s + 6*r.NormFloat64()*math.Sqrt(a*b/s/s/(s+1))
 		if x <= 0 || x >= 1 || r.IntN(3) == 0 {

@@ -18,7 +18,8 @@ func lgammaBig(a dd.DD) (hi, lo float64) {
 	return l.hi, l.lo
 }
 
-// betaQuickKernel returns x^a y^b / B(a, b) as exp(l) m, for a, b <= quickMax.
+// betaQuickKernel returns x^a y^b / B(a, b) as exp(l) m, for min(a, b) <= quickMax: logarithms that are
+// multiplied by the larger parameter are near 0 and relatively right.
 func betaQuickKernel(a, b float64, x, y dd.DD) (l acc, m dd.DD) {
 	s := dd.Sum(a, b)
 	lo, hi := min(a, b), max(a, b)
@@ -72,7 +73,7 @@ func log1mQuick(x dd.DD) dd.DD {
 
 // quickBetaKernel is BetaKernel on the quick path.
 func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
-	if !(min(a, b) >= 1e-6 && max(a, b) <= quickMax && min(x.Hi, y.Hi) > 1e-280) {
+	if !(min(a, b) >= 1e-6 && min(a, b) <= quickMax && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
 		return Scaled{}, false
 	}
 	return quickScaled(betaQuickKernel(a, b, x, y))
@@ -86,7 +87,7 @@ func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
 //	otherwise                                        continued fraction of Didonato and Morris (1992); left
 //	                                                 to the full path where it is slow (x near 1)
 func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
-	if !(min(a, b) >= 1e-3 && max(a, b) <= quickMax && min(x.Hi, y.Hi) > 1e-280) {
+	if !(min(a, b) >= 1e-3 && min(a, b) <= quickMax && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
 		return Scaled{}, false, false
 	}
 	var c acc
