@@ -62,6 +62,10 @@ func sqrtPair(a dd.DD) dd.DD {
 
 // lgamma1p returns log Gamma(1+a+al) for 0 < a < 16 and a low part al, with an error below 2^-62.
 func lgamma1p(a, al float64) (hi, lo float64) {
+	if k := int(2 * a); float64(k) == 2*a && al == 0 {
+		t := &lgammaHalf[k]
+		return t.Hi, t.Lo
+	}
 	i := int(a * 16)
 	t := &lgammaTable[i]
 	h := a - (float64(i)+0.5)/16

@@ -8,6 +8,10 @@ import (
 
 // lgammaBig returns log Gamma(1+a) for 16 <= a <= 32.
 func lgammaBig(a dd.DD) (hi, lo float64) {
+	if k := int(2 * a.Hi); float64(k) == 2*a.Hi && a.Lo == 0 {
+		t := &lgammaHalf[k]
+		return t.Hi, t.Lo
+	}
 	var l acc
 	g := dd.LogQuick(a)
 	l.addProd(a.Hi+0.5, g.Hi, g.Lo)
