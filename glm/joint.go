@@ -26,6 +26,7 @@ type joint struct {
 	tol    float64
 	gram   *linalg.Gram
 	factor *linalg.Factor
+	ws     *workspace // memory to use; nil: new
 }
 
 // basis says how the accumulated columns come from those asked for: b = (x −
@@ -92,17 +93,22 @@ func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
 
 // newJoint factors the columns of the models.
 func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, error) {
+	j := new(joint)
+	return j, j.init(ctx, models, eliminate)
+}
+
+func (j *joint) init(ctx context.Context, models []*Model, eliminate bool) error {
 	first := models[0]
-	j := &joint{src: first.src, response: first.response, opt: first.opt, at: first.at}
-	j.cols = make([]*bound, 0, len(models[len(models)-1].cols)+len(first.cols))
+	*j = joint{src: first.src, response: first.response, opt: first.opt, at: first.at, ws: j.ws, cols: j.cols[:0],
+		basis: basis{shift: j.shift[:0], exp: j.exp[:0]}}
 	j.shifted = true
 	largest := 0
 	for _, m := range models {
 		if err := first.obs.Check(m.obs); err != nil {
-			return nil, err
+			return err
 		}
 		if m.opt.KnownVariance != first.opt.KnownVariance || m.opt.Weights.Kind != first.opt.Weights.Kind {
-			return nil, fmt.Errorf("glm: %w: known variance and kind of weights differ", lrt.ErrDifferentCriterion)
+			return fmt.Errorf("glm: %w: known variance and kind of weights differ", lrt.ErrDifferentCriterion)
 		}
 		p := 0
 		for _, b := range m.cols {
@@ -125,19 +131,34 @@ func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, err
 		j.tol = 100 * float64(max(largest, 1)) * 0x1p-52
 	}
 	if err := j.accumulate(ctx); err != nil {
-		return nil, err
+		return err
 	}
 	j.gram.Finish()
 	if !j.gram.Finite() {
-		return nil, fmt.Errorf("glm: %w: response %q or a column is beyond 1e300 on its own scale", ErrOverflow, j.response)
+		return fmt.Errorf("glm: %w: response %q or a column is beyond 1e300 on its own scale", ErrOverflow, j.response)
 	}
-	all := make([]int, len(j.cols))
-	for i := range all {
-		all[i] = i
-	}
-	j.factor = linalg.NewFactor(j.gram, all, j.settings(eliminate))
+	j.factor = j.newFactor(eliminate)
 	j.gram = j.factor.Clean()
-	return j, ctx.Err()
+	return ctx.Err()
+}
+
+// newFactor factors all columns.
+func (j *joint) newFactor(eliminate bool) *linalg.Factor {
+	var all []int
+	var f *linalg.Factor
+	if j.ws != nil {
+		all, f = j.ws.all[:0], &j.ws.factor
+	} else {
+		f = new(linalg.Factor)
+	}
+	for i := range j.cols {
+		all = append(all, i)
+	}
+	if j.ws != nil {
+		j.ws.all = all
+	}
+	f.Init(j.gram, all, j.settings(eliminate))
+	return f
 }
 
 func (j *joint) settings(eliminate bool) linalg.Settings {

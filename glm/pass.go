@@ -21,6 +21,8 @@ type filler struct {
 	block linalg.Block
 	low   [][]float64    // storage of low parts; block.Lo shows those that are not zero
 	part  Window         // scratch
+	mem   []float64      // behind the columns
+	heads [][]float64    // behind the lists of columns
 	start int            // row number of the block's first row
 	watch func(w Window) // called with every window added; may be nil
 	tally
@@ -28,11 +30,14 @@ type filler struct {
 
 // newFiller prepares the buffers for blocks of up to rows rows.
 func (j *joint) newFiller(rows int) *filler {
-	f := &filler{j: j}
+	f := new(filler)
+	if j.ws != nil {
+		f = &j.ws.filler
+	}
+	*f = filler{j: j, first: f.first[:0], part: f.part, mem: f.mem, heads: f.heads}
 	n, idx, val := 0, 0, 0
-	f.first = make([]int, len(j.cols))
-	for g, b := range j.cols {
-		f.first[g] = n
+	for _, b := range j.cols {
+		f.first = append(f.first, n)
 		if b.dense() {
 			n += len(b.Names)
 		} else if idx++; b.Value != nil {
@@ -41,13 +46,20 @@ func (j *joint) newFiller(rows int) *filler {
 	}
 	f.yc = n
 	n += 1 + len(j.offsets)
-	floats := make([]float64, (2*n+2*val+1)*rows)
+	if need := (2*n + 2*val + 1) * rows; cap(f.mem) < need {
+		f.mem = make([]float64, need)
+	}
+	floats := f.mem[:cap(f.mem)]
 	take := func() []float64 {
 		s := floats[:rows:rows]
 		floats = floats[rows:]
 		return s
 	}
-	heads := make([][]float64, 3*n+2*idx)
+	if cap(f.heads) < 3*n+2*idx {
+		f.heads = make([][]float64, 3*n+2*idx)
+	}
+	heads := f.heads[:3*n+2*idx]
+	clear(heads)
 	f.block.Hi, f.block.Lo, f.low = heads[:n:n], heads[n:2*n:2*n], heads[2*n:3*n:3*n]
 	for i := range n {
 		f.block.Hi[i], f.low[i] = take(), take()
@@ -361,7 +373,7 @@ func (f *filler) weigh() error {
 // the values are far from zero, and a power of two where they are far from one.
 func (f *filler) chooseBasis() {
 	j, n := f.j, f.block.Rows
-	j.shift, j.exp = make([]float64, f.yc+1), make([]int, f.yc+1)
+	j.shift, j.exp = append(j.shift[:0], make([]float64, f.yc+1)...), append(j.exp[:0], make([]int, f.yc+1)...)
 	for g, b := range j.cols {
 		switch c := f.first[g]; {
 		case !b.dense() || b.Key == "constant":
@@ -405,11 +417,11 @@ func (f *filler) choosePowers(g int) {
 	}
 	j.basis.powers[g] = q
 	scale := math.Ldexp(1, -q.exp)
+	if f.block.Lo[c] == nil {
+		clear(f.low[c][:n])
+	}
 	for k := range q.degree {
 		f.lower(c+k, 0)
-		if f.block.Lo[c] == nil {
-			clear(f.low[c+k][:n])
-		}
 	}
 	for i := range n {
 		u := dd.DD{Hi: x[i], Lo: f.block.Lo[c][i]}.AddF(-q.centre)
@@ -528,19 +540,26 @@ func (f *filler) cut(w Window, from, to int) Window {
 // shape returns the groups of the joint's columns, and the dense column of the
 // constant, −1.
 func (j *joint) shape() (gs []linalg.Group, ones int) {
-	gs = make([]linalg.Group, len(j.cols))
+	if j.ws != nil {
+		gs = j.ws.groups[:0]
+	}
 	ones = -1
 	n := 0
-	for i, b := range j.cols {
+	for _, b := range j.cols {
+		var g linalg.Group
 		if b.Key == "constant" {
 			ones = n
 		}
 		if b.dense() {
-			gs[i].Dense = len(b.Names)
+			g.Dense = len(b.Names)
 			n += len(b.Names)
 		} else {
-			gs[i].Levels, gs[i].Valued = len(b.Names), b.Value != nil
+			g.Levels, g.Valued = len(b.Names), b.Value != nil
 		}
+		gs = append(gs, g)
+	}
+	if j.ws != nil {
+		j.ws.groups = gs
 	}
 	return gs, ones
 }
@@ -551,7 +570,11 @@ const chunkRows = 32 * linalg.BlockRows
 // accumulate makes the pass that fills the Gram.
 func (j *joint) accumulate(ctx context.Context) error {
 	groups, ones := j.shape()
-	j.gram = linalg.NewGram(groups, 1+len(j.offsets), ones, j.opt.Weights.Kind == Precision)
+	j.gram = new(linalg.Gram)
+	if j.ws != nil {
+		j.gram = &j.ws.gram
+	}
+	j.gram.Init(groups, 1+len(j.offsets), ones, j.opt.Weights.Kind == Precision)
 	size := linalg.BlockRows
 	if sliced, ok := j.src.(Sliced); ok {
 		size = min(size, max(sliced.Len(), 1))

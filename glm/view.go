@@ -36,18 +36,32 @@ type restricted struct {
 
 // space makes the view of a model.
 func (j *joint) space(m *Model) (*view, error) {
-	gs, err := j.groups(m)
-	if err != nil {
-		return nil, err
+	v := j.newView()
+	v.m, v.rhs = m, j.offset(m.opt.Offset)
+	for _, b := range m.cols {
+		g := j.group(b)
+		if g < 0 {
+			return nil, fmt.Errorf("glm: %w: term %q is not in the joint factorization", lrt.ErrInvalid, b.name)
+		}
+		v.groups = append(v.groups, g)
 	}
-	v := &view{m: m, groups: gs, rhs: j.offset(m.opt.Offset)}
 	if len(m.eqs) == 0 && v.rhs == 0 {
-		if v.rank, v.prefix = j.factor.Prefix(gs); v.prefix {
+		if v.rank, v.prefix = j.factor.Prefix(v.groups); v.prefix {
 			v.rss = j.factor.Residual(0, 0).Add(j.factor.Between(0, v.rank, j.factor.Rank))
 			return v, nil
 		}
 	}
 	return v, j.solve(v)
+}
+
+func (j *joint) newView() *view {
+	if ws := j.ws; ws != nil && ws.used < len(ws.views) {
+		v := &ws.views[ws.used]
+		ws.used++
+		*v = view{groups: v.groups[:0]}
+		return v
+	}
+	return new(view)
 }
 
 // solve finds the coefficients of a view on the basis of the joint.
@@ -123,10 +137,7 @@ func (m *Model) FitPair(ctx context.Context, c lrt.Comparison) (lrt.Pair, error)
 			return lrt.Pair{}, notLinear(c.Restricted)
 		}
 		if j == nil || s.joint != j {
-			var err error
-			if j, err = newJoint(ctx, []*Model{s, m}, true); err != nil {
-				return lrt.Pair{}, err
-			}
+			return pairAlone(ctx, c, s, m)
 		}
 		return j.pair(c)
 	}

@@ -2,6 +2,7 @@ package linalg
 
 import (
 	"math"
+	"slices"
 
 	"subsume.example/internal/dd"
 )
@@ -45,6 +46,7 @@ type Factor struct {
 	piv  []int // columns of the rest that were kept
 	resd []dd.DD
 
+	mem  []float64   // behind r
 	left map[int]vec // rows of the Schur complement of dense columns set aside
 
 	// Rank is the dimension of the space.
@@ -57,7 +59,15 @@ type Factor struct {
 
 // NewFactor factors the columns of the groups in the order given.
 func NewFactor(g *Gram, groups []int, s Settings) *Factor {
-	f := &Factor{g: g, groups: groups, elim: -1, SmallestKept: 1}
+	f := new(Factor)
+	f.Init(g, groups, s)
+	return f
+}
+
+// Init makes f the factor that NewFactor returns, reusing the memory of f.
+func (f *Factor) Init(g *Gram, groups []int, s Settings) {
+	*f = Factor{g: g, groups: groups, elim: -1, SmallestKept: 1,
+		pos: f.pos[:0], r: f.r[:0], piv: f.piv[:0], resd: f.resd[:0], mem: f.mem}
 	if s.Eliminate {
 		best := minEliminate - 1
 		for _, gi := range groups {
@@ -75,9 +85,8 @@ func NewFactor(g *Gram, groups []int, s Settings) *Factor {
 			}
 		}
 	}
-	f.pos = make([]int, len(f.rest))
-	for i, gi := range f.rest {
-		f.pos[i] = f.q
+	for _, gi := range f.rest {
+		f.pos = append(f.pos, f.q)
 		f.q += g.groups[gi].Columns()
 	}
 	f.load()
@@ -85,17 +94,19 @@ func NewFactor(g *Gram, groups []int, s Settings) *Factor {
 		f.eliminate(s.Workers)
 	}
 	f.cholesky(s)
-	return f
 }
 
 // load copies the cross-products of the rest and the right-hand sides; entry
 // (i, j), i <= j, is f.r[j] at i.
 func (f *Factor) load() {
 	g, m := f.g, f.q+f.g.rhs
-	f.r = make([]vec, m)
-	arena := make([]float64, 2*m*m)
+	if cap(f.mem) < 2*m*m {
+		f.mem = make([]float64, 2*m*m)
+	}
+	mem := f.mem[:2*m*m]
+	clear(mem)
 	for j := range m {
-		f.r[j] = vec{arena[2*j*m : (2*j+1)*m], arena[(2*j+1)*m : (2*j+2)*m]}
+		f.r = append(f.r, vec{mem[2*j*m : (2*j+1)*m], mem[(2*j+1)*m : (2*j+2)*m]})
 	}
 	put := func(i, j int, x dd.DD) {
 		if i > j {
@@ -243,7 +254,6 @@ func (f *Factor) cholesky(s Settings) {
 	f.Rank = f.live
 	tol2 := s.Tol * s.Tol
 	m := len(f.r)
-	f.piv = make([]int, 0, f.q)
 	for k := range f.q {
 		t := len(f.piv)
 		rk := f.r[k]
@@ -286,7 +296,7 @@ func (f *Factor) cholesky(s Settings) {
 	}
 	f.Rank += len(f.piv)
 	t := len(f.piv)
-	f.resd = make([]dd.DD, f.g.rhs*f.g.rhs)
+	f.resd = slices.Grow(f.resd, f.g.rhs*f.g.rhs)[:f.g.rhs*f.g.rhs]
 	for i := range f.g.rhs {
 		for j := range i + 1 {
 			x := f.r[f.q+i].at(f.q + j)
@@ -383,3 +393,8 @@ func (f *Factor) Clean() *Gram {
 
 // Eliminated reports whether a group went first as a diagonal.
 func (f *Factor) Eliminated() bool { return f.elim >= 0 }
+
+// Forget drops everything but memory that Init can use again.
+func (f *Factor) Forget() {
+	*f = Factor{pos: f.pos[:0], r: f.r[:0], piv: f.piv[:0], resd: f.resd[:0], mem: f.mem}
+}

@@ -69,21 +69,32 @@ const maxCross = 1 << 22
 // NewGram returns an empty Gram. ones is the dense column that is 1 throughout,
 // −1 for none; weighted says that weights that are not whole will come.
 func NewGram(groups []Group, rhs, ones int, weighted bool) *Gram {
-	g := &Gram{groups: groups, rhs: rhs, ones: ones, weighted: weighted}
-	if len(groups) > 0 {
-		buf := make([]int, 2*len(groups))
-		g.dense, g.index = buf[:len(groups)], buf[len(groups):]
-	}
+	g := new(Gram)
+	g.Init(groups, rhs, ones, weighted)
+	return g
+}
+
+// Init makes g the empty Gram that NewGram returns. It reuses the memory of g, which
+// pays where all groups are dense.
+func (g *Gram) Init(groups []Group, rhs, ones int, weighted bool) {
+	*g = Gram{groups: groups, rhs: rhs, ones: ones, weighted: weighted, dense: g.dense[:0], index: g.index[:0], dd: g.dd[:0], wx: g.wx}
 	for i, gr := range groups {
-		g.dense[i], g.index[i] = g.nd, -1
+		g.dense = append(g.dense, g.nd)
 		g.nd += gr.Dense
+		at := -1
 		if gr.Levels > 0 {
-			g.index[i] = len(g.ig)
+			at = len(g.ig)
 			g.ig = append(g.ig, i)
 		}
+		g.index = append(g.index, at)
 	}
 	m := g.nd + rhs
-	g.dd = make([]dd.DD, m*(m+1)/2)
+	if n := m * (m + 1) / 2; cap(g.dd) < n {
+		g.dd = make([]dd.DD, n)
+	} else {
+		g.dd = g.dd[:n]
+		clear(g.dd)
+	}
 	for a, i := range g.ig {
 		l := groups[i].Levels
 		g.diag = append(g.diag, make([]dd.DD, l))
@@ -103,7 +114,6 @@ func NewGram(groups []Group, rhs, ones int, weighted bool) *Gram {
 			g.cross = append(g.cross, c)
 		}
 	}
-	return g
 }
 
 // Rows returns how many rows were added.
