@@ -280,7 +280,7 @@ func (f *Factor) cholesky(s Settings) {
 			}
 			for ; j < hi; j++ {
 				c := f.r[j]
-				c.set(t, c.at(k).Sub(dot1(rk, c, t)).Mul(inv))
+				c.set(t, c.at(k).Sub(dot(rk, c, t)).Mul(inv))
 			}
 		}
 		if n := m - k - 1; n*t > 1<<15 && s.Workers != 1 {

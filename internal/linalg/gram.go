@@ -144,7 +144,7 @@ func (g *Gram) Add(b *Block) {
 		}
 		for ; i <= j; i++ {
 			at := packed(i, j)
-			g.dd[at] = g.dd[at].Add(dot1(x, b.column(i), n))
+			g.dd[at] = g.dd[at].Add(dot(x, b.column(i), n))
 		}
 	}
 	for a := range g.ig {

@@ -36,74 +36,79 @@ func (t *acc) add(a, b float64) {
 	t.s = s
 }
 
-func (t acc) sum() dd.DD {
-	s, e := dd.QuickTwoSum(t.s, t.c)
-	return dd.DD{Hi: s, Lo: e}
+// lanes are four compensated sums; element i of a dot product goes to sum i mod 4,
+// whichever kernel adds it, so that all kernels give the same bits.
+type lanes struct{ s, c [4]float64 }
+
+// sum adds the four up.
+func (l *lanes) sum() dd.DD {
+	s, e := dd.TwoSum(l.s[0], l.s[1])
+	t, f := dd.TwoSum(l.s[2], l.s[3])
+	u, g := dd.TwoSum(s, t)
+	return dd.Sum(u, ((l.c[0]+l.c[1])+(l.c[2]+l.c[3]))+((e+f)+g))
 }
 
-// dot returns Σ a·b in twice the working precision (Ogita, Rump and Oishi 2005,
-// algorithm 5.3), low parts included.
+// addFrom adds elements from..n−1 one by one.
+func (l *lanes) addFrom(a, b []float64, from int) {
+	for i := from; i < len(a); i++ {
+		k := i & 3
+		t := acc{l.s[k], l.c[k]}
+		t.add(a[i], b[i])
+		l.s[k], l.c[k] = t.s, t.c
+	}
+}
+
+// dot returns Σ a·b of n elements in twice the working precision (Ogita, Rump and
+// Oishi 2005, algorithm 5.3), low parts included.
 func dot(a, b vec, n int) dd.DD {
-	var t, u acc
+	var l lanes
 	ah, bh := a.hi[:n], b.hi[:n]
-	i := 0
-	for ; i+1 < n; i += 2 {
-		t.add(ah[i], bh[i])
-		u.add(ah[i+1], bh[i+1])
+	l.addFrom(ah, bh, lanesOf(ah, bh, &l))
+	if a.lo != nil || b.lo != nil {
+		l.c[0] += crossLow(a, b, n)
 	}
-	if i < n {
-		t.add(ah[i], bh[i])
+	return l.sum()
+}
+
+// dot4 returns the dot products of a with four vectors; the bits are those of dot.
+func dot4(a, b0, b1, b2, b3 vec, n int) (r [4]dd.DD) {
+	var l [4]lanes
+	ah, h0, h1, h2, h3 := a.hi[:n], b0.hi[:n], b1.hi[:n], b2.hi[:n], b3.hi[:n]
+	from := lanesOf4(ah, h0, h1, h2, h3, &l)
+	if from < n {
+		l[0].addFrom(ah, h0, from)
+		l[1].addFrom(ah, h1, from)
+		l[2].addFrom(ah, h2, from)
+		l[3].addFrom(ah, h3, from)
 	}
-	t.c += crossLow(a, b, n)
-	return t.sum().Add(u.sum())
+	if a.lo != nil || b0.lo != nil || b1.lo != nil || b2.lo != nil || b3.lo != nil {
+		l[0].c[0] += crossLow(a, b0, n)
+		l[1].c[0] += crossLow(a, b1, n)
+		l[2].c[0] += crossLow(a, b2, n)
+		l[3].c[0] += crossLow(a, b3, n)
+	}
+	for k := range r {
+		r[k] = l[k].sum()
+	}
+	return r
 }
 
 // crossLow returns Σ a.hi·b.lo + a.lo·b.hi, plain: it is of the order of the
 // roundoff of the leading sum, and its own roundoff of the order of that squared.
 func crossLow(a, b vec, n int) float64 {
-	var x, y float64
+	var l [4]float64
 	if b.lo != nil {
-		bl, ah := b.lo[:n], a.hi[:n]
-		for i, v := range bl {
-			x = math.FMA(ah[i], v, x)
-		}
+		sumOf(a.hi[:n], b.lo[:n], &l)
 	}
 	if a.lo != nil {
-		al, bh := a.lo[:n], b.hi[:n]
-		for i, v := range al {
-			y = math.FMA(v, bh[i], y)
-		}
+		sumOf(a.lo[:n], b.hi[:n], &l)
 	}
-	return x + y
+	return (l[0] + l[1]) + (l[2] + l[3])
 }
 
-// dot4 returns the dot products of a with four vectors at once: the loads of
-// a are shared and the four chains overlap. Bits are those of dot1 on each.
-func dot4(a, b0, b1, b2, b3 vec, n int) (r [4]dd.DD) {
-	var t0, t1, t2, t3 acc
-	ah, h0, h1, h2, h3 := a.hi[:n], b0.hi[:n], b1.hi[:n], b2.hi[:n], b3.hi[:n]
-	for i, x := range ah {
-		t0.add(x, h0[i])
-		t1.add(x, h1[i])
-		t2.add(x, h2[i])
-		t3.add(x, h3[i])
+// sumOf adds the products to four plain sums, element i to sum i mod 4.
+func sumOf(a, b []float64, l *[4]float64) {
+	for i := sumsOf(a, b, l); i < len(a); i++ {
+		l[i&3] = math.FMA(a[i], b[i], l[i&3])
 	}
-	if a.lo != nil || b0.lo != nil || b1.lo != nil || b2.lo != nil || b3.lo != nil {
-		t0.c += crossLow(a, b0, n)
-		t1.c += crossLow(a, b1, n)
-		t2.c += crossLow(a, b2, n)
-		t3.c += crossLow(a, b3, n)
-	}
-	return [4]dd.DD{t0.sum(), t1.sum(), t2.sum(), t3.sum()}
-}
-
-// dot1 is dot with one chain, the sums of dot4.
-func dot1(a, b vec, n int) dd.DD {
-	var t acc
-	ah, bh := a.hi[:n], b.hi[:n]
-	for i, x := range ah {
-		t.add(x, bh[i])
-	}
-	t.c += crossLow(a, b, n)
-	return t.sum()
 }
