@@ -30,9 +30,11 @@ type filler struct {
 
 // newFiller prepares the buffers for blocks of up to rows rows.
 func (j *joint) newFiller(rows int) *filler {
-	f := new(filler)
+	var f *filler
 	if j.ws != nil {
 		f = &j.ws.filler
+	} else {
+		f = new(filler)
 	}
 	*f = filler{j: j, first: f.first[:0], part: f.part, mem: f.mem, heads: f.heads}
 	n, idx, val := 0, 0, 0
@@ -570,19 +572,33 @@ const chunkRows = 32 * linalg.BlockRows
 // accumulate makes the pass that fills the Gram.
 func (j *joint) accumulate(ctx context.Context) error {
 	groups, ones := j.shape()
-	j.gram = new(linalg.Gram)
 	if j.ws != nil {
 		j.gram = &j.ws.gram
+	} else {
+		j.gram = new(linalg.Gram)
 	}
 	j.gram.Init(groups, 1+len(j.offsets), ones, j.opt.Weights.Kind == Precision)
 	size := linalg.BlockRows
-	if sliced, ok := j.src.(Sliced); ok {
+	sliced, ok := j.src.(Sliced)
+	if ok {
 		size = min(size, max(sliced.Len(), 1))
 		if sliced.Len() > chunkRows && j.gram.Small() && j.workers() > 1 {
 			return j.accumulateParallel(ctx, sliced)
 		}
 	}
 	f := j.newFiller(size)
+	if ok && sliced.Len() == size { // one block
+		sliced.Slice(&f.part, 0, size)
+		if err := f.add(f.part); err != nil {
+			return err
+		}
+		if err := f.finish(true); err != nil {
+			return err
+		}
+		j.gram.Add(&f.block)
+		j.tally = f.tally
+		return j.checkRows()
+	}
 	total := j.gram
 	part := total
 	chunk := 0

@@ -269,27 +269,13 @@ func (f *Factor) cholesky(s Settings) {
 		}
 		root := left.Sqrt()
 		inv := dd.From(1).Div(root)
-		step := func(lo, hi int) {
-			j := lo
-			for ; j+3 < hi; j += 4 {
-				ds := dot4(rk, f.r[j], f.r[j+1], f.r[j+2], f.r[j+3], t)
-				for i := range ds {
-					c := f.r[j+i]
-					c.set(t, c.at(k).Sub(ds[i]).Mul(inv))
-				}
-			}
-			for ; j < hi; j++ {
-				c := f.r[j]
-				c.set(t, c.at(k).Sub(dot(rk, c, t)).Mul(inv))
-			}
-		}
 		if n := m - k - 1; n*t > 1<<15 && s.Workers != 1 {
 			parallel(s.Workers, n*t, func(w, of int) {
 				lo, hi := chunk4(n, w, of)
-				step(k+1+lo, k+1+hi)
+				f.step(k, t, inv, k+1+lo, k+1+hi)
 			})
 		} else {
-			step(k+1, m)
+			f.step(k, t, inv, k+1, m)
 		}
 		rk.set(t, root)
 		f.piv = append(f.piv, k)
@@ -303,6 +289,23 @@ func (f *Factor) cholesky(s Settings) {
 			x = x.Sub(dot(f.r[f.q+i], f.r[f.q+j], t))
 			f.resd[i*f.g.rhs+j], f.resd[j*f.g.rhs+i] = x, x
 		}
+	}
+}
+
+// step finds the coordinate on pivot t, column k, of the columns from lo to hi−1.
+func (f *Factor) step(k, t int, inv dd.DD, lo, hi int) {
+	rk := f.r[k]
+	j := lo
+	for ; j+3 < hi; j += 4 {
+		ds := dot4(rk, f.r[j], f.r[j+1], f.r[j+2], f.r[j+3], t)
+		for i := range ds {
+			c := f.r[j+i]
+			c.set(t, c.at(k).Sub(ds[i]).Mul(inv))
+		}
+	}
+	for ; j < hi; j++ {
+		c := f.r[j]
+		c.set(t, c.at(k).Sub(dot(rk, c, t)).Mul(inv))
 	}
 }
 
