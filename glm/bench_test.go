@@ -108,6 +108,28 @@ func BenchmarkSmallCompare(b *testing.B) {
 	race(b, "x-gonum", 1000, run, gonumQR(b, 30, 4))
 }
 
+// BenchmarkSmallFit is the workspace route: estimates, standard errors, F and p.
+func BenchmarkSmallFit(b *testing.B) {
+	y, x := regression(30, 4)
+	x = append([][]float64{ones(30)}, x...)
+	w, err := glm.NewWorkspace(30, 4)
+	if err != nil {
+		b.Fatal(err)
+	}
+	run := func() {
+		l, err := w.Compare(x, y, 1)
+		if err != nil {
+			b.Fatal(err)
+		}
+		l.F()
+	}
+	b.ReportAllocs()
+	for b.Loop() {
+		run()
+	}
+	race(b, "x-gonum", 2000, run, gonumQR(b, 30, 4))
+}
+
 func BenchmarkLinear(b *testing.B) {
 	for _, s := range []struct{ n, p int }{{1000, 10}, {100000, 20}} {
 		b.Run(fmt.Sprintf("n=%d/p=%d", s.n, s.p), func(b *testing.B) {
