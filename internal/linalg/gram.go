@@ -134,17 +134,16 @@ func (g *Gram) Add(b *Block) {
 		if b.Weight != nil {
 			x = g.weigh(x, b.Weight, n)
 		}
+		at := packed(0, j)
 		i := 0
-		for ; i+3 <= j; i += 4 {
-			r := dot4(x, b.column(i), b.column(i+1), b.column(i+2), b.column(i+3), n)
-			at := packed(i, j)
-			for k := range r {
-				g.dd[at+k] = g.dd[at+k].Add(r[k])
+		for ; i+1 <= j; i += 4 { // up to four at a time; a remainder of one goes alone
+			r := dot4(x, b.column(i), b.column(i+1), b.column(min(i+2, j)), b.column(min(i+3, j)), n)
+			for k := range min(4, j-i+1) {
+				g.dd[at+i+k] = g.dd[at+i+k].Add(r[k])
 			}
 		}
-		for ; i <= j; i++ {
-			at := packed(i, j)
-			g.dd[at] = g.dd[at].Add(dot(x, b.column(i), n))
+		if i == j {
+			g.dd[at+j] = g.dd[at+j].Add(dot(x, b.column(j), n))
 		}
 	}
 	for a := range g.ig {
