@@ -59,6 +59,9 @@ func (d *Declared) Estimates(ctx context.Context, fit Fit) (Estimates, error) {
 		}
 	}
 	for k, p := range d.frame.params {
+		if e.StdErr[k] == 0 && !zero(q.p.co.basis[k]) {
+			mark(k, inf) // free, yet without curvature
+		}
 		for _, h := range q.held {
 			if h.param == k {
 				mark(k, nan)
