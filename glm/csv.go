@@ -116,7 +116,7 @@ func (s *csvScan) configure() error {
 	case d == s.mark:
 		return s.fail(-1, "", "", fmt.Errorf("%w: delimiter and decimal mark are both %q", ErrOptions, d))
 	case d != '\t' && (d <= ' ' || d >= 0x7F) || d == '"' || d == '+' || d == '-' || d == '.' || d >= '0' && d <= '9' || d|0x20 >= 'a' && d|0x20 <= 'z':
-		return s.fail(-1, "", "", fmt.Errorf("%w: delimiter %q, want a tab or an ASCII punctuation mark other than \" + - .", ErrOptions, d))
+		return s.fail(-1, "", "", fmt.Errorf("%w: delimiter %q, want a tab or an ASCII punctuation mark, but not a quote, sign or point", ErrOptions, d))
 	case o.MaxBytes < 0 || o.MaxRows < 0 || o.Workers < 0:
 		return s.fail(-1, "", "", fmt.Errorf("%w: negative limit or number of workers", ErrOptions))
 	}

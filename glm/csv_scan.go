@@ -225,7 +225,7 @@ func (s *csvScan) setup(names []string, place map[string]int) error {
 	}
 	check := func(name, option string) error {
 		if _, ok := place[name]; !ok {
-			return s.fail(-1, name, "", fmt.Errorf("%w, though %s names it", ErrUnknownColumn, option))
+			return s.fail(-1, name, "", fmt.Errorf("%w: named by %s, but there are %s", ErrUnknownColumn, option, quoteNames(names)))
 		}
 		return nil
 	}

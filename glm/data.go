@@ -138,16 +138,25 @@ func (d *Data) find(name string) (*column, error) {
 
 // names lists the columns for a message.
 func (d *Data) names() string {
+	names := make([]string, len(d.schema))
+	for i, f := range d.schema {
+		names[i] = f.Name
+	}
+	return quoteNames(names)
+}
+
+// quoteNames lists the first names for a message.
+func quoteNames(names []string) string {
 	const most = 12
 	s := ""
-	for i, f := range d.schema {
+	for i, name := range names {
 		if i == most {
-			return s + fmt.Sprintf(" and %d more", len(d.schema)-most)
+			return s + fmt.Sprintf(" and %d more", len(names)-most)
 		}
 		if i > 0 {
 			s += ", "
 		}
-		s += fmt.Sprintf("%q", clip(f.Name))
+		s += fmt.Sprintf("%q", clip(name))
 	}
 	return s
 }

@@ -9,6 +9,7 @@ import (
 	"runtime"
 	"sync"
 
+	"subsume.example/dist"
 	"subsume.example/glm"
 	"subsume.example/lrt"
 )
@@ -32,14 +33,22 @@ type checks struct {
 // simulated is a statistic with its p from simulated residuals of this design.
 type simulated struct {
 	value float64
-	p     float64
+	p     float64 // NaN: too much work to simulate
+	bound float64 // never below p, by Bonferroni's inequality; NaN: none
 	draws int
+}
+
+// isOutlying reports whether the largest residual is larger than chance allows.
+func (s *study) isOutlying() bool {
+	alpha := 1 - s.level
+	return s.outlying.p <= alpha || s.outlying.draws == 0 && s.outlying.bound <= alpha
 }
 
 // without is the comparison when one row is left out.
 type without struct {
 	result lrt.Result
-	same   bool // the decision is the same
+	same   bool    // the decision is the same
+	spread float64 // p of equal spread; NaN: not made
 }
 
 // check makes every check. A check that cannot be made says why and stops nothing.
@@ -56,7 +65,7 @@ func (s *study) check(ctx context.Context) error {
 	if err := s.checkResiduals(ctx); err != nil {
 		return err
 	}
-	if s.spread, s.sds, err = s.equalSpread(ctx); err != nil {
+	if s.spread, s.sds, err = s.equalSpread(ctx, s.data); err != nil {
 		if ctx.Err() != nil {
 			return err
 		}
@@ -94,21 +103,34 @@ func summary(rows []glm.RowFit) (largest float64, at int, serial float64) {
 	return largest, at, steps / squares
 }
 
-// maxWork is the largest number of simulated values.
-const maxWork = 50_000_000
+// Simulation is kept to a few seconds: a draw of n rows costs about
+// n·(20 + rank²) units of work.
+const (
+	maxWork    = 250_000_000
+	fewestDraw = 99
+)
 
 // checkResiduals refers both statistics to their law for this design: residuals of
 // normal errors depend on no parameter once they are scaled, so that draws of
 // standard normal errors give the law itself.
 func (s *study) checkResiduals(ctx context.Context) error {
-	if s.fullFit.DFError < 2 || !(s.fullFit.RSS > 0) || s.hasWarning("perfect-fit") {
+	if s.fullFit.DFError < 2 || s.result.Pair.Linear.Nil {
 		s.residuals = "the residuals leave nothing to look at"
 		return nil
 	}
 	var largest, serial float64
 	largest, s.worst, serial = summary(s.byRow)
-	n := s.data.Len()
-	draws := min(s.draws, max(99, maxWork/n))
+	n, rank := s.data.Len(), s.fullFit.Rank
+	t := dist.StudentT{Nu: float64(s.fullFit.DFError - 1)}
+	bound := min(1, 2*float64(n)*t.Survival(largest))
+	s.outlying, s.serial = simulated{largest, math.NaN(), bound, 0}, simulated{serial, math.NaN(), math.NaN(), 0}
+	draws := min(s.draws, maxWork/(n*(20+rank*rank)))
+	if draws < fewestDraw {
+		if bound <= 1-s.level {
+			return s.leaveOut(ctx)
+		}
+		return nil
+	}
 	maxima, steps, err := s.simulate(ctx, draws)
 	if err != nil {
 		return err
@@ -126,9 +148,9 @@ func (s *study) checkResiduals(ctx context.Context) error {
 		}
 	}
 	share := func(k int) float64 { return float64(1+k) / float64(draws+1) }
-	s.outlying = simulated{largest, share(above), draws}
-	s.serial = simulated{serial, min(1, 2*min(share(low), share(high))), draws}
-	if s.outlying.p <= 1-s.level {
+	s.outlying.p, s.outlying.draws = share(above), draws
+	s.serial.p, s.serial.draws = min(1, 2*min(share(low), share(high))), draws
+	if s.isOutlying() {
 		return s.leaveOut(ctx)
 	}
 	return nil
@@ -197,8 +219,11 @@ func (s *study) leaveOut(ctx context.Context) error {
 		return nil
 	}
 	alpha := 1 - s.level
-	s.without = &without{r, (r.P() <= alpha) == (s.result.P() <= alpha)}
-	return nil
+	s.without = &without{r, (r.P() <= alpha) == (s.result.P() <= alpha), math.NaN()}
+	if spread, _, err := s.equalSpread(ctx, data); err == nil {
+		s.without.spread = spread.P()
+	}
+	return ctx.Err()
 }
 
 // checkSlopes compares one slope of each covariate for all groups with one for each.
@@ -224,8 +249,8 @@ func (s *study) checkSlopes(ctx context.Context) error {
 	return nil
 }
 
-// hasWarning reports whether the main comparison carries the warning.
-func (s *study) hasWarning(code string) bool { return s.result.HasWarning(code) }
+// notChecked lists what a reader might take for checked.
+var notChecked = []string{"whether residuals are normal beyond outlying ones", "the shape of the dependence on covariates", "how the rows came about"}
 
 // writeChecks writes what the checks found.
 func (s *study) writeChecks(p *page) {
@@ -235,8 +260,12 @@ func (s *study) writeChecks(p *page) {
 		p.text("Residuals: not checked, %s.", s.residuals)
 	} else {
 		r := s.byRow[s.worst]
-		p.text("Outlying row: the largest studentized residual is %s, %s (%s %s in %s, expected %s). Among %d simulated sets of normal residuals of this design p = %s%s",
-			dec(r.Studentized, 2), s.place(s.worst), s.response, fig(r.Response, 5), s.groups[s.index[s.worst]], fig(r.Fitted, 5), s.outlying.draws, prob(s.outlying.p, 0), verdict(s.outlying.p <= alpha, ": look at it.", "."))
+		law := fmt.Sprintf("Among %d simulated sets of normal residuals of this design p = %s (at most %s by Bonferroni's inequality)", s.outlying.draws, prob(s.outlying.p, 0), prob(s.outlying.bound, 0))
+		if s.outlying.draws == 0 {
+			law = fmt.Sprintf("p is at most %s by Bonferroni's inequality (too many rows to simulate)", prob(s.outlying.bound, 0))
+		}
+		p.text("Outlying row: the largest studentized residual is %s, %s (%s %s in %s, expected %s). %s%s",
+			dec(r.Studentized, 2), s.place(s.worst), s.response, fig(r.Response, 5), s.groups[s.index[s.worst]], fig(r.Fitted, 5), law, verdict(s.isOutlying(), ": look at it.", "."))
 		if w := s.without; w != nil {
 			same := "the answer stays the same"
 			if !w.same {
@@ -244,17 +273,21 @@ func (s *study) writeChecks(p *page) {
 			}
 			p.text("Without that row: %s = %s, p = %s; %s. It was not left out: only a known cause is a reason to.", w.result.Test().Name, fig(w.result.Test().Statistic, 5), prob(w.result.P(), w.result.LogP()), same)
 		}
-		p.line("")
-		p.text("File order: the steps between neighbouring residuals give %s where independent rows give about 2; simulated two-sided p = %s%s",
-			fig(s.serial.value, 4), prob(s.serial.p, 0), verdict(s.serial.p <= alpha, ": neighbours are related, and every p above is then doubtful.", "."))
-		p.line("")
+		p.gap()
+		law = "simulated two-sided p = " + prob(s.serial.p, 0)
+		if s.serial.draws == 0 {
+			law = "too many rows to simulate a p"
+		}
+		p.text("File order: the steps between neighbouring residuals give %s where independent rows give about 2; %s%s",
+			fig(s.serial.value, 4), law, verdict(s.serial.p <= alpha, ": neighbours are related, and every p above is then doubtful.", "."))
+		p.gap()
 		s.strip(p)
 	}
 	r := s.byRow[s.leverage]
 	average := float64(s.fullFit.Rank) / float64(len(s.byRow))
 	p.text("Leverage: the largest is %s, %s; the average is %s%s", fig(r.Leverage, 3), s.place(s.leverage), fig(average, 3),
 		verdict(r.Leverage > 0.5, ": the fit follows that row.", "."))
-	p.line("")
+	p.gap()
 	s.writeSpread(p, alpha)
 	if s.noSlopes != "" {
 		p.text("Equal slopes: not checked, %s.", s.noSlopes)
@@ -263,27 +296,30 @@ func (s *study) writeChecks(p *page) {
 		p.text("Equal slopes: %s = %s, p = %s%s", t.Name, fig(t.Statistic, 4), prob(t.P, t.LogP),
 			verdict(t.P <= alpha, ": the groups differ by more at some values of "+and(s.covariates)+" than at others, and one difference does not describe them.", "."))
 	}
-	p.line("")
-	p.text("Not checked: normal residuals beyond outlying ones, the shape of the dependence on covariates, and anything about how the rows came about.")
+	p.gap()
+	p.text("Not checked: %s.", and(notChecked))
 }
 
 // writeSpread writes the check of equal standard deviations.
 func (s *study) writeSpread(p *page, alpha float64) {
 	if s.noSpread != "" {
 		p.text("Equal spread: not checked, %s.", s.noSpread)
-		p.line("")
+		p.gap()
 		return
 	}
 	r := s.spread
 	t := r.Test()
 	p.text("Equal spread: one standard deviation against one for each group, by likelihood: −2 log λ = %s with %g df, p = %s (%s)%s",
 		fig(r.Statistic, 4), r.Pair.DF, prob(t.P, t.LogP), r.Recommended, verdict(t.P <= alpha, ": spreads differ, and the F test above may mislead.", "."))
+	if w := s.without; w != nil && !math.IsNaN(w.spread) {
+		p.text("Without %s: p = %s.", s.place(s.worst), prob(w.spread, math.Log(w.spread)))
+	}
 	words := make([]string, len(s.groups))
 	for g, name := range s.groups {
 		words[g] = fmt.Sprintf("%s %s", name, fig(s.sds[g], 3))
 	}
 	p.text("Standard deviations (maximum likelihood): %s.", and(words))
-	p.line("")
+	p.gap()
 }
 
 // strip draws the mean residual of each twelfth of the file, on a scale of residual SDs.
@@ -295,7 +331,7 @@ func (s *study) strip(p *page) {
 		return
 	}
 	p.line("Mean residual by part of the file, in residual SDs (each dot; the bars are ±2 standard errors):")
-	p.line("")
+	p.gap()
 	t := p.table("rl")
 	for b := range blocks {
 		from, to := b*n/blocks, (b+1)*n/blocks

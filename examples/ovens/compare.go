@@ -100,14 +100,15 @@ func (s *study) explain(err error) error {
 	return err
 }
 
+// question is what is asked, in words.
+func (s *study) question() string {
+	return fmt.Sprintf("Does the mean of %s differ between the groups of %s%s by more than chance allows?", s.response, s.group, s.atEqual())
+}
+
 // writeQuestion says what is asked.
 func (s *study) writeQuestion(p *page) {
 	p.title("Question")
-	given := ""
-	if len(s.covariates) > 0 {
-		given = " at equal " + and(s.covariates)
-	}
-	p.text("Does the mean of %s differ between the groups of %s%s by more than chance allows?", s.response, s.group, given)
+	p.text("%s", s.question())
 	p.line("")
 	p.line("  restricted model: %s", s.small)
 	p.line("  full model:       %s", s.full)
@@ -154,7 +155,7 @@ func (s *study) writeTable(p *page) {
 	for i, r := range s.table {
 		l := r.Pair.Linear
 		d1, _ := l.DF()
-		ss := math.Ldexp(l.Numerator, 2*l.Scale)
+		ss := sumOfSquares(l)
 		name := r.Comparison.Name
 		if i > 0 {
 			name += ", after " + and(s.covariates[:i])
@@ -166,6 +167,9 @@ func (s *study) writeTable(p *page) {
 	t.row("total about the mean", fig(f.TotalSS, 6), fmt.Sprint(f.N-1), "", "", "")
 	t.end()
 }
+
+// sumOfSquares is the numerator in the units of the response.
+func sumOfSquares(l lrt.Linear) float64 { return math.Ldexp(l.Numerator, 2*l.Scale) }
 
 // atEqual adds the covariates to a sentence.
 func (s *study) atEqual() string {

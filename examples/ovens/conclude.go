@@ -24,14 +24,13 @@ func (s *study) conclusion() []string {
 	alpha := 1 - s.level
 	t := s.result.Test()
 	differ := t.P <= alpha
-	law := ""
+	var law string
 	if t.Kind == lrt.Exact {
 		d1, d2 := s.result.Pair.Linear.DF()
 		law = fmt.Sprintf("F(%g, %g) = %s, ", d1, d2, fig(t.Statistic, 4))
 	} else {
 		law = fmt.Sprintf("%s = %s, ", t.Name, fig(t.Statistic, 4))
 	}
-	places := placesFor(s.fullFit.SD)
 	var out []string
 	if differ {
 		out = append(out, fmt.Sprintf("Yes: with %d rows the mean %s differs between the groups of %s%s by more than chance allows at level %s (%sp = %s).",
@@ -40,31 +39,51 @@ func (s *study) conclusion() []string {
 		out = append(out, fmt.Sprintf("No difference is shown: with %d rows the mean %s does not differ between the groups of %s%s by more than chance allows at level %s (%sp = %s). That is not evidence that the groups are equal: see the intervals.",
 			s.data.Len(), s.response, s.group, s.atEqual(), percent(alpha), law, prob(t.P, t.LogP)))
 	}
+	if s.result.Pair.Linear.Nil {
+		out = append(out, "The groups explain every value without any rest, which measured values do not do: find out how the values came about before anything is made of them.")
+	}
+	out = append(out, s.pairsInWords(alpha)...)
+	if q := s.planned; q != nil && len(s.pairs) > 0 {
+		out = append(out, s.againstPlan(q))
+	}
+	out = append(out, s.doubts())
+	out = append(out, "What this does not show: why the groups differ. Unless rows were given to the groups by lot, whatever else differs between them may be the cause, and another plant, time or batch may behave otherwise. Where a decision from these figures could hurt someone, it needs qualified review and the rules of the field.")
+	return out
+}
+
+// mostShown is the largest number of pairs named in a sentence.
+const mostShown = 10
+
+// pairsInWords names the pairs that differ.
+func (s *study) pairsInWords(alpha float64) (out []string) {
+	if len(s.pairs) == 0 {
+		return nil
+	}
+	places := placesFor(s.fullFit.SD)
 	var shown, open []string
 	widest := s.pairs[0]
 	for _, q := range s.pairs {
 		if q.difference.Value > widest.difference.Value {
 			widest = q
 		}
-		if q.adjusted <= alpha {
+		if q.joint <= alpha {
 			shown = append(shown, fmt.Sprintf("%s over %s by %s (%s to %s)", q.over, q.under, dec(q.difference.Value, places), dec(q.lower, places), dec(q.upper, places)))
 		} else {
 			open = append(open, q.over+" and "+q.under)
 		}
 	}
 	switch {
+	case len(shown) > mostShown:
+		out = append(out, fmt.Sprintf("%d of %d pairs differ, all pairs considered together; the table lists them. For the others no difference is shown, which does not make them equal.", len(shown), len(s.pairs)))
 	case len(shown) > 0 && len(open) > 0:
 		out = append(out, fmt.Sprintf("Pairs that differ, all pairs considered together: %s. For the other %d of %d pairs no difference is shown, which does not make them equal.", strings.Join(shown, "; "), len(open), len(s.pairs)))
-	case len(shown) > 0:
+	case len(shown) > 0 && len(s.pairs) > 1:
 		out = append(out, fmt.Sprintf("All pairs differ: %s.", strings.Join(shown, "; ")))
+	case len(shown) > 0:
+		out = append(out, fmt.Sprintf("The difference is %s.", shown[0]))
 	default:
 		out = append(out, fmt.Sprintf("No single pair is shown to differ; the widest difference is %s over %s by %s (%s to %s).", widest.over, widest.under, dec(widest.difference.Value, places), dec(widest.lower, places), dec(widest.upper, places)))
 	}
-	if q := s.planned; q != nil {
-		out = append(out, s.againstPlan(q))
-	}
-	out = append(out, s.doubts())
-	out = append(out, fmt.Sprintf("What this does not show: why the groups differ. Unless rows were given to the groups by lot, whatever else differs between them may be the cause, and another plant, time or batch may behave otherwise. Where a decision from these figures could hurt someone, it needs qualified review and the rules of the field."))
 	return out
 }
 
@@ -86,7 +105,7 @@ func (s *study) againstPlan(q *plan) string {
 func (s *study) doubts() string {
 	alpha := 1 - s.level
 	var d []string
-	if s.residuals == "" && s.outlying.p <= alpha {
+	if s.residuals == "" && s.isOutlying() {
 		w := "look at " + s.place(s.worst) + ", which is outlying"
 		if s.without != nil && s.without.same {
 			w += " (the answer does not hang on it)"
@@ -99,13 +118,27 @@ func (s *study) doubts() string {
 		d = append(d, "neighbouring rows are related")
 	}
 	if s.noSpread == "" && s.spread.P() <= alpha {
-		d = append(d, "spreads differ between groups")
+		w := "spreads differ between groups"
+		if s.without != nil && s.without.spread > alpha {
+			w += fmt.Sprintf(" (not without %s)", s.place(s.worst))
+		}
+		d = append(d, w)
 	}
 	if len(s.covariates) > 0 && s.noSlopes == "" && s.slopes.P() <= alpha {
 		d = append(d, "slopes differ between groups")
 	}
-	if len(d) == 0 {
-		return "The checks that were made put nothing in doubt."
+	text := "The checks that were made put nothing in doubt."
+	if len(d) > 0 {
+		text = "The checks say: " + strings.Join(d, "; ") + "."
 	}
-	return "The checks say: " + strings.Join(d, "; ") + "."
+	var not []string
+	for _, c := range []struct{ name, why string }{{"residuals", s.residuals}, {"equal spread", s.noSpread}, {"equal slopes", s.noSlopes}} {
+		if c.why != "" {
+			not = append(not, c.name)
+		}
+	}
+	if len(not) > 0 {
+		text += " Not checked here: " + and(not) + "."
+	}
+	return text
 }

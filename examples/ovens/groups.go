@@ -18,12 +18,19 @@ type ways struct {
 	pairs []pairing
 }
 
+// mostGroups is the largest number of groups whose pairs are compared, and mostPairs
+// that of the pairs shown.
+const (
+	mostGroups = 100
+	mostPairs  = 45
+)
+
 // pairing is the difference between two groups.
 type pairing struct {
 	over, under  string // the estimate of over − under is not negative
 	difference   glm.Estimate
-	adjusted     float64 // p by Holm's method over all pairs
-	lower, upper float64 // simultaneous, by Bonferroni's
+	joint        float64 // p, and interval, that hold for all pairs together, by Bonferroni's inequality
+	lower, upper float64
 }
 
 // follow estimates the mean of every group where the covariates are equal, and
@@ -45,6 +52,9 @@ func (s *study) follow(ctx context.Context) error {
 	}
 	if s.means, _, err = s.fullFit.Predict(ctx, rows); err != nil {
 		return err
+	}
+	if len(s.groups) > mostGroups {
+		return nil
 	}
 	name := map[string]string{}
 	for _, c := range s.fullFit.Coefficients {
@@ -78,11 +88,9 @@ func (s *study) adjust() {
 	slices.SortStableFunc(s.pairs, func(a, b pairing) int { return cmp.Compare(a.difference.P, b.difference.P) })
 	m := float64(len(s.pairs))
 	t := dist.StudentT{Nu: float64(s.fullFit.DFError)}.UpperQuantile((1 - s.level) / (2 * m))
-	highest := 0.0
 	for i := range s.pairs {
 		q := &s.pairs[i]
-		highest = max(highest, min(1, (m-float64(i))*q.difference.P))
-		q.adjusted = highest
+		q.joint = min(1, m*q.difference.P)
 		q.lower, q.upper = q.difference.Value-t*q.difference.SE, q.difference.Value+t*q.difference.SE
 	}
 }
@@ -109,14 +117,39 @@ func (s *study) writeGroups(p *page) {
 		t.row(g, fmt.Sprint(s.counts[i]), dec(m.Value, places), dec(m.SE, places+1), dec(m.Lower, places), dec(m.Upper, places))
 	}
 	t.end()
-	p.line("Differences, largest first by p (p over all %d pairs by Holm's method, intervals of joint level %s by Bonferroni's):", len(s.pairs), percent(s.level))
+	s.writePairs(p, places)
+}
+
+// writePairs writes the differences, the clearest first.
+func (s *study) writePairs(p *page, places int) {
+	if len(s.pairs) == 0 {
+		p.text("Differences of pairs: not made for more than %d groups.", mostGroups)
+		return
+	}
+	if len(s.pairs) > 1 {
+		p.text("Differences, the clearest first. Intervals and the last p hold for all %d pairs together (level %s, by Bonferroni's inequality):", len(s.pairs), percent(s.level))
+	} else {
+		p.text("The difference, with its %s interval:", percent(s.level))
+	}
 	p.line("")
-	t = p.table("lrrrrr")
-	t.row("pair", "difference", "from", "to", "p alone", "p of all")
-	for _, q := range s.pairs {
-		t.row(q.over+" over "+q.under, dec(q.difference.Value, places), dec(q.lower, places), dec(q.upper, places), prob(q.difference.P, math.Log(q.difference.P)), prob(q.adjusted, math.Log(q.adjusted)))
+	t := p.table("lrrrrr")
+	head := []string{"pair", "difference", "from", "to", "p alone", "p jointly"}
+	if len(s.pairs) == 1 {
+		head = head[:5]
+	}
+	t.row(head...)
+	for i, q := range s.pairs {
+		if i == mostPairs {
+			break
+		}
+		cells := []string{q.over + " over " + q.under, dec(q.difference.Value, places), dec(q.lower, places), dec(q.upper, places),
+			prob(q.difference.P, math.Log(q.difference.P)), prob(q.joint, math.Log(q.joint))}
+		t.row(cells[:len(head)]...)
 	}
 	t.end()
+	if n := len(s.pairs) - mostPairs; n > 0 {
+		p.line("%d more are in the record (-record).", n)
+	}
 }
 
 // placesFor returns how many decimals show about three digits of x.

@@ -12,10 +12,15 @@ import (
 type page struct{ b strings.Builder }
 
 func (p *page) title(s string) {
-	if p.b.Len() > 0 {
+	p.gap()
+	fmt.Fprintf(&p.b, "%s\n%s\n", strings.ToUpper(s), strings.Repeat("─", utf8.RuneCountInString(s)))
+}
+
+// gap leaves one empty line.
+func (p *page) gap() {
+	if s := p.b.String(); s != "" && !strings.HasSuffix(s, "\n\n") {
 		p.b.WriteByte('\n')
 	}
-	fmt.Fprintf(&p.b, "%s\n%s\n", strings.ToUpper(s), strings.Repeat("─", utf8.RuneCountInString(s)))
 }
 
 func (p *page) line(format string, args ...any) {
@@ -100,7 +105,7 @@ func fig(x float64, digits int) string {
 	}
 	e := int(math.Floor(math.Log10(math.Abs(x))))
 	if e < -4 || e > 7 {
-		return strings.Replace(fmt.Sprintf("%.*e", digits-1, x), "-", "−", 1)
+		return strings.ReplaceAll(fmt.Sprintf("%.*e", digits-1, x), "-", "−")
 	}
 	return sign(fmt.Sprintf("%.*f", max(digits-1-e, 0), x))
 }
@@ -127,7 +132,7 @@ func prob(p, logP float64) string {
 	case math.IsNaN(p):
 		return "unknown"
 	case p > 0:
-		return fmt.Sprintf("%.3g", p)
+		return strings.ReplaceAll(fmt.Sprintf("%.3g", p), "-", "−")
 	case math.IsInf(logP, -1):
 		return "0"
 	}

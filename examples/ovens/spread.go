@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 
+	"subsume.example/glm"
 	"subsume.example/lrt"
 )
 
@@ -78,21 +79,37 @@ func (s *study) spreadStart() []float64 {
 	return theta
 }
 
+// mostSpreads is the largest number of groups with a standard deviation each.
+const mostSpreads = 20
+
 // equalSpread compares one standard deviation for all groups with one for each,
 // by likelihood.
-func (s *study) equalSpread(ctx context.Context) (lrt.Result, []float64, error) {
-	for g, n := range s.counts {
+func (s *study) equalSpread(ctx context.Context, data *glm.Data) (lrt.Result, []float64, error) {
+	index, groups, err := data.LevelIndex(s.group)
+	if err != nil {
+		return lrt.Result{}, nil, err
+	}
+	if len(groups) < len(s.groups) {
+		return lrt.Result{}, nil, errors.New("a group has no row left")
+	}
+	if len(groups) > mostSpreads {
+		return lrt.Result{}, nil, fmt.Errorf("more than %d groups are too many for this check", mostSpreads)
+	}
+	counts := make([]int, len(groups))
+	for _, g := range index {
+		counts[g]++
+	}
+	for g, n := range counts {
 		if n < 2+len(s.covariates) {
-			return lrt.Result{}, nil, fmt.Errorf("group %s has only %s", s.groups[g], rows(n))
+			return lrt.Result{}, nil, fmt.Errorf("group %s has only %s", groups[g], rows(n))
 		}
 	}
-	d := rowsOf{group: s.index, k: len(s.groups)}
-	var err error
-	if d.y, err = s.data.Values(s.response); err != nil {
+	d := rowsOf{group: index, k: len(groups)}
+	if d.y, err = data.Values(s.response); err != nil {
 		return lrt.Result{}, nil, err
 	}
 	for j, name := range s.covariates {
-		v, err := s.data.Values(name)
+		v, err := data.Values(name)
 		if err != nil {
 			return lrt.Result{}, nil, err
 		}

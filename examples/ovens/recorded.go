@@ -1,0 +1,228 @@
+package main
+
+import (
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"runtime"
+	"runtime/debug"
+
+	"subsume.example/dist"
+	"subsume.example/glm"
+	"subsume.example/lrt"
+)
+
+// saveRecord writes the record to a file, or after the report.
+func (s *study) saveRecord(path string, out io.Writer) error {
+	r, err := s.recorded()
+	if err != nil {
+		return err
+	}
+	b, err := encode(r)
+	if err != nil {
+		return err
+	}
+	if path == "-" {
+		_, err = out.Write(append([]byte("\n"), b...))
+	} else {
+		err = os.WriteFile(path, b, 0o644)
+	}
+	if err != nil {
+		return &outputError{err}
+	}
+	return nil
+}
+
+// recorded fills the record.
+func (s *study) recorded() (*record, error) {
+	r := &record{Schema: "ovens/1", NotChecked: notChecked, Conclusion: s.conclusion()}
+	r.Hypothesis = recHypothesis{
+		Words:      s.question(),
+		Restricted: s.small.String(), Full: s.full.String(),
+		ErrorPair: []string{s.full.String(), "all rows"},
+	}
+	if c := s.result.Pair.Certificate; c != nil {
+		r.Hypothesis.Null = c.Hypothesis
+	}
+	for _, c := range s.fullFit.Coefficients {
+		if c.Term == s.group && !c.Aliased {
+			r.Hypothesis.Tested = append(r.Hypothesis.Tested, c.Name)
+		}
+	}
+	s.recordDesign(r)
+	if err := s.recordData(r); err != nil {
+		return nil, err
+	}
+	s.recordNumbers(r)
+	s.recordEstimates(r)
+	s.recordChecks(r)
+	s.recordPlan(r)
+	f := s.fullFit
+	r.Reproduction = recReproduction{
+		Library: libraryVersion(), Go: runtime.Version(), Arch: runtime.GOARCH, Seed: s.seed, Draws: s.outlying.draws,
+		RankTolerance: figure(f.Tolerance), SmallestKept: figure(f.SmallestKept), LargestAside: figure(f.LargestAside),
+		Fitting: "orthogonal factorization, no iterations; the check of equal spread is iterated to a checked maximum",
+	}
+	return r, nil
+}
+
+func (s *study) recordDesign(r *record) {
+	d := recDesign{Unit: "row", Factor: s.group, Kind: "fixed", Covariates: append([]string{}, s.covariates...),
+		EmptyCells: []string{}, Blocks: []string{}, Randomization: "not declared"}
+	for i, g := range s.groups {
+		d.Groups = append(d.Groups, recGroup{g, s.counts[i]})
+	}
+	r.Design = d
+}
+
+func (s *study) recordData(r *record) error {
+	a := s.data.Account()
+	o := s.data.Observations(s.response)
+	rows, err := o.Rows.Digest()
+	if err != nil {
+		return err
+	}
+	response, err := o.Response.Digest()
+	if err != nil {
+		return err
+	}
+	d := recData{Source: filepath.Base(a.Source), RowsRead: a.Read, RowsUsed: a.Used, Dropped: []recDrop{}, Emptied: []recLevel{}, Levels: s.groups,
+		MissingRule: "rows complete in every column used", MissingWords: append([]string{""}, s.missing...),
+		Digest: fmt.Sprintf("%x", rows), ResponseDigest: fmt.Sprintf("%x", response)}
+	for _, drop := range a.Dropped {
+		q := recDrop{Column: drop.Column, Reason: drop.Reason}
+		for _, row := range drop.Rows {
+			q.Lines = append(q.Lines, s.all.Line(row))
+		}
+		d.Dropped = append(d.Dropped, q)
+	}
+	for _, e := range a.Emptied {
+		d.Emptied = append(d.Emptied, recLevel{e.Column, e.Level})
+	}
+	r.Data = d
+	return nil
+}
+
+func (s *study) recordNumbers(r *record) {
+	q, l := s.result, s.result.Pair.Linear
+	t := q.Test()
+	d1, d2 := l.DF()
+	ss := sumOfSquares(l)
+	r.Method = recMethod{Statistic: t.Name, Kind: t.Kind.String(), Why: q.Why, Certified: l.Certified, Side: "upper tail: a larger statistic speaks against the restricted model",
+		Level: figure(s.level), Dispersion: "error variance estimated from the full model", Weights: "none", Offset: "none", Link: "identity",
+		Coding: "one indicator a group; tests do not depend on the coding"}
+	if t.Law != nil {
+		r.Method.Reference = t.Law.String()
+	}
+	r.Numbers = recNumbers{
+		Restricted: recorded(s.smallFit), Full: recorded(s.fullFit),
+		NumeratorDF: figure(d1), DenominatorDF: figure(d2), NumeratorSS: figure(ss), NumeratorMS: figure(ss / d1),
+		DenominatorMS: figure(s.fullFit.RSS / float64(s.fullFit.DFError)),
+		F:             figure(q.Exact.Statistic), P: figure(q.Exact.P), LogP: figure(q.Exact.LogP),
+		Critical:      figure(dist.F{D1: d1, D2: d2}.UpperQuantile(1 - s.level)),
+		Noncentrality: figure(q.Exact.Statistic*d1*(d2-2)/d2 - d1),
+		LogLambda:     figure(q.LogLambda), Lambda: figure(q.Lambda), LambdaOf: q.Stratum(),
+		ChiSquared: figure(q.ChiSquared.Statistic), ChiSquaredDF: figure(q.Pair.DF), ChiSquaredP: figure(q.ChiSquared.P), ChiSquaredLogP: figure(q.ChiSquared.LogP),
+		ChiSquaredTrue: figure(q.TrueSize(1 - s.level)),
+	}
+	for _, row := range s.table {
+		d1, _ := row.Pair.Linear.DF()
+		ss := sumOfSquares(row.Pair.Linear)
+		r.Table = append(r.Table, recRow{Name: row.Comparison.Name, SS: figure(ss), DF: figure(d1), MS: figure(ss / d1), F: figure(row.Exact.Statistic), P: figure(row.Exact.P), LogP: figure(row.Exact.LogP), Kind: row.Exact.Kind.String()})
+	}
+}
+
+func recorded(f *glm.Fit) recFit {
+	return recFit{f.N, f.Rank, f.DFError, figure(f.RSS), figure(f.SD), figure(f.LogLikelihood)}
+}
+
+func (s *study) recordEstimates(r *record) {
+	e := recEstimates{At: []recValue{}}
+	for i, c := range s.covariates {
+		e.At = append(e.At, recValue{c, figure(s.at[i])})
+	}
+	for i, g := range s.groups {
+		m := s.means[i]
+		e.Means = append(e.Means, recMean{g, figure(m.Value), figure(m.SE), figure(m.Lower), figure(m.Upper)})
+	}
+	for _, q := range s.pairs {
+		d := q.difference
+		e.Pairs = append(e.Pairs, recPair{q.over, q.under, figure(d.Value), figure(d.SE), figure(d.T), figure(d.P), figure(q.joint), figure(q.lower), figure(q.upper)})
+	}
+	r.Estimates = e
+	r.Multiplicity = recMultiplicity{"all pairs of groups", len(s.pairs), "Bonferroni", "Bonferroni"}
+}
+
+func (s *study) recordChecks(r *record) {
+	add := func(c recCheck) { r.Checks = append(r.Checks, c) }
+	skip := func(name, why string) { add(recCheck{Name: name, Value: nan, P: nan, Note: "not made: " + why}) }
+	if s.residuals != "" {
+		skip("outlying row", s.residuals)
+		skip("file order", s.residuals)
+	} else {
+		law := fmt.Sprintf("%d simulated sets of normal residuals of this design", s.outlying.draws)
+		add(recCheck{"outlying row", "largest absolute studentized residual", figure(s.outlying.value), figure(s.outlying.p), law, s.data.Line(s.worst), ""})
+		add(recCheck{"outlying row, bound", "largest absolute studentized residual", figure(s.outlying.value), figure(s.outlying.bound), "Bonferroni's inequality: p is not above this", s.data.Line(s.worst), ""})
+		if w := s.without; w != nil {
+			add(recCheck{"answer without the outlying row", w.result.Test().Name, figure(w.result.Test().Statistic), figure(w.result.P()), w.result.Recommended.String(), s.data.Line(s.worst), "the row was not left out of the answer"})
+		}
+		add(recCheck{"file order", "squared steps between neighbouring residuals over squared residuals", figure(s.serial.value), figure(s.serial.p), law + ", two-sided", 0, ""})
+	}
+	add(recCheck{"leverage", "largest leverage", figure(s.byRow[s.leverage].Leverage), nan, "no test", s.data.Line(s.leverage), ""})
+	s.recordLikelihood(r, "equal spread", s.spread, s.noSpread)
+	if len(s.covariates) > 0 {
+		s.recordLikelihood(r, "equal slopes", s.slopes, s.noSlopes)
+	}
+	r.Warnings = []recWarning{}
+	for _, list := range [][]lrt.Warning{s.result.Warnings, s.fullFit.Warnings, s.spread.Warnings} {
+		for _, w := range list {
+			r.Warnings = append(r.Warnings, recWarning{w.Code, w.Text})
+		}
+	}
+}
+
+func (s *study) recordLikelihood(r *record, name string, q lrt.Result, not string) {
+	c := recCheck{Name: name, Value: nan, P: nan, Note: "not made: " + not}
+	if not == "" {
+		t := q.Test()
+		c = recCheck{Name: name, Statistic: t.Name, Value: figure(t.Statistic), P: figure(t.P), Reference: t.Kind.String()}
+		if t.Law != nil {
+			c.Reference += " " + t.Law.String()
+		}
+	}
+	r.Checks = append(r.Checks, c)
+}
+
+func (s *study) recordPlan(r *record) {
+	if q := s.planned; q != nil {
+		r.Plan = &recPlan{figure(q.difference), figure(q.sd), figure(q.alpha), figure(q.noncentrality), figure(q.power), figure(q.wanted), figure(q.detectable), q.each}
+	}
+}
+
+// libraryVersion is the version of the library that the program was built with.
+func libraryVersion() string {
+	const module = "subsume.example"
+	info, ok := debug.ReadBuildInfo()
+	if !ok {
+		return "unknown"
+	}
+	if info.Main.Path == module {
+		return version(info.Main.Version)
+	}
+	for _, d := range info.Deps {
+		if d.Path == module {
+			return version(d.Version)
+		}
+	}
+	return "unknown"
+}
+
+// version is a released version, or "development": a build inside the
+// repository, whose stamp would change with every commit.
+func version(v string) string {
+	if v == "" || v == "(devel)" || len(v) > len("v000.000.000") {
+		return "development"
+	}
+	return v
+}
