@@ -42,9 +42,7 @@ func (s *study) recorded() (*record, error) {
 		Restricted: s.small.String(), Full: s.full.String(),
 		ErrorPair: []string{s.full.String(), "all rows"},
 	}
-	if c := s.result.Pair.Certificate; c != nil {
-		r.Hypothesis.Null = c.Hypothesis
-	}
+	r.Hypothesis.Null = s.result.Comparison.Hypothesis()
 	for _, c := range s.fullFit.Coefficients {
 		if c.Term == s.group && !c.Aliased {
 			r.Hypothesis.Tested = append(r.Hypothesis.Tested, c.Name)
