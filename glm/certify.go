@@ -1,154 +1,398 @@
 package glm
 
 import (
+	"fmt"
+	"math"
+
 	"subsume.example/internal/linalg"
 	"subsume.example/lrt"
 )
 
-// certify decides whether the F of a comparison has exactly the F law under the
-// null, for every value of the variances left free. With Pn = P_B − P_S, Pd =
-// P_E1 − P_E0, the fixed space M1, its part M0 under the null, and K_j = Z_j Z_jᵀ
-// of the independent errors (K_0 = I) and each random term, F is exact if
+// The certificate. With Pn = P_B − P_S, Pd = P_E1 − P_E0, the fixed space M1, its
+// part M0 under the null, and K_j = Z_j Z_jᵀ of the independent errors (K_0 = I)
+// and of each random term, all of rows times root weights, the F of a
+// comparison has exactly the F law under the null, for every value of the
+// variances left free, if
 //
 //	Pn M0 = 0, Pd M1 = 0, Pn K_j Pn = c_j Pn, Pd K_j Pd = c_j Pd, Pn K_j Pd = 0
 //
-// with one constant c_j for each j.
-func (j *joint) certify(c lrt.Comparison, s, b *view) (*lrt.Certificate, error) {
-	cert := &lrt.Certificate{Exact: true, Tol: 1e-8}
-	for _, v := range []*view{s, b} {
-		for _, col := range v.m.cols {
-			if col.FromResponse {
-				return refuse(cert, col.name, "the column is made from the response", 0), nil
-			}
-		}
-	}
-	if c.Effects == nil && (c.Error == nil || j.within(b, c.Error.Smaller.(*Model))) {
-		return cert, nil // Pd is orthogonal to E0, which holds B and is the fixed space
-	}
-	return j.certifyNumerically(cert, c, s, b)
+// with one constant c_j for each j (numerator and denominator are then independent
+// multiples of χ² with one common factor). Most designs are decided by nesting: a
+// random term inside S lies off Pn; one whose columns have one length and
+// hold B has Pn K Pn = length² Pn. The rest are decided in coordinates of the
+// joint factor, which must not be too many.
+
+const certTol = 1e-8
+
+// certificate is one decision in the making.
+type certificate struct {
+	j            *joint
+	c            lrt.Comparison
+	s, b, e0, e1 *view // e1 nil: all rows
+	out          *lrt.Certificate
+
+	co     *linalg.Coordinates // made when asked for
+	qn, qd *linalg.Subspace
+	whole  bool // qd is the part of all rows inside the joint factor, which does not hold them all
+}
+
+// certify decides whether the F of a comparison is exact under its null.
+func (j *joint) certify(c lrt.Comparison, s, b, e0, e1 *view) (*lrt.Certificate, error) {
+	k := &certificate{j: j, c: c, s: s, b: b, e0: e0, e1: e1,
+		out: &lrt.Certificate{Exact: true, Tol: certTol, C: []float64{1}}}
+	return k.out, k.decide()
 }
 
 // refuse records which identity a term breaks.
-func refuse(c *lrt.Certificate, term, identity string, residual float64) *lrt.Certificate {
-	c.Exact, c.Term, c.Identity, c.Residual = false, term, identity, max(c.Residual, residual)
-	return c
+func (k *certificate) refuse(term, identity string, residual float64) {
+	c := k.out
+	c.Exact, c.Term, c.Identity, c.Residual = false, term, identity, math.Max(c.Residual, residual)
 }
 
-// within reports whether every term of v is one of m, and m is not restricted.
-func (j *joint) within(v *view, m *Model) bool {
+// check refuses where a residual is above the tolerance.
+func (k *certificate) check(term, identity string, residual float64) {
+	k.out.Residual = math.Max(k.out.Residual, residual)
+	if !(residual <= certTol) && k.out.Exact {
+		k.refuse(term, identity, residual)
+	}
+}
+
+func (k *certificate) decide() error {
+	for _, v := range []*view{k.s, k.b, k.e0, k.e1} {
+		if v == nil {
+			continue
+		}
+		for _, col := range v.m.cols {
+			if col.FromResponse {
+				k.refuse(col.name, "the column is made from the response", 0)
+				return nil
+			}
+		}
+	}
+	known := k.j.opt.KnownVariance > 0 // no denominator
+	if !known && !k.inside(k.b, k.e0) {
+		if err := k.sameOrigin(); err != nil || !k.out.Exact {
+			return err
+		}
+		if err := k.coordinates(); err != nil || !k.out.Exact {
+			return err
+		}
+		k.check("numerator", "Pn Pd = 0", k.qn.Overlap(k.qd))
+	}
+	ef := k.c.Effects
+	if ef == nil || !k.out.Exact {
+		return nil
+	}
+	if ef.Fixed != nil && !known {
+		if err := k.apart(ef.Fixed, k.e0, k.e1, "error", "Pd M1 = 0"); err != nil {
+			return err
+		}
+	}
+	if ef.NullFixed != nil && k.out.Exact {
+		if err := k.apart(ef.NullFixed, k.s, k.b, "numerator", "Pn M0 = 0"); err != nil {
+			return err
+		}
+	}
+	for _, r := range ef.Random {
+		if !k.out.Exact {
+			return nil
+		}
+		if err := k.random(r, known); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// inside reports whether a lies inside b, origins included.
+func (k *certificate) inside(a, b *view) bool {
+	if a == b {
+		return true
+	}
+	_, err := k.j.nested(a, b)
+	return err == nil
+}
+
+// linear is a view without its origin: fixed spaces and random terms have none.
+func linear(v, like *view) *view {
+	w := *v
+	w.rhs = like.rhs
+	return &w
+}
+
+// sameOrigin refuses an error pair whose spaces do not share the origin of S, and
+// do not hold B: what the offset or the value puts into Pd would be no error.
+func (k *certificate) sameOrigin() error {
+	for _, v := range []*view{k.e0, k.e1} {
+		if v == nil {
+			continue
+		}
+		moved := v.rhs != k.s.rhs
+		for _, e := range v.m.eqs {
+			moved = moved || e.Value != 0
+		}
+		if moved {
+			k.refuse("error", "one origin for all spaces", 0)
+		}
+	}
+	return nil
+}
+
+// apart checks that a fixed space has no part in larger off smaller.
+func (k *certificate) apart(space lrt.Space, smaller, larger *view, term, identity string) error {
+	m, ok := space.(*Model)
+	if !ok {
+		return notLinear(space)
+	}
+	v, err := k.j.space(m)
+	if err != nil {
+		return err
+	}
+	switch {
+	case k.inside(linear(v, smaller), smaller):
+		return nil
+	case larger == nil && len(smaller.m.eqs) == 0:
+		k.refuse(term, identity, k.outside(v, smaller))
+		return nil
+	case larger != nil && len(smaller.m.eqs)+len(larger.m.eqs)+len(m.eqs) == 0:
+		// ‖P x‖² is the same for both spaces.
+		f0, f1 := k.j.factorOf(smaller), k.j.factorOf(larger)
+		worst := 0.0
+		for i, g := range v.groups {
+			for c := range v.m.cols[i].Names {
+				in0, norm := f0.Inside(g, c)
+				in1, _ := f1.Inside(g, c)
+				if norm.Hi > 0 {
+					worst = math.Max(worst, in1.Sub(in0).Hi/norm.Hi)
+				}
+			}
+		}
+		k.check(term, identity, math.Sqrt(worst))
+		return nil
+	}
+	if err := k.coordinates(); err != nil || !k.out.Exact {
+		return err
+	}
+	q := k.qd
+	if smaller == k.s {
+		q = k.qn
+	}
+	u, err := k.j.subspace(k.co, v)
+	if err != nil {
+		return err
+	}
+	k.check(term, identity, q.Overlap(u))
+	return nil
+}
+
+// outside returns the largest part of a column of v that a space leaves.
+func (k *certificate) outside(v, space *view) float64 {
+	f, worst := k.j.factorOf(space), 0.0
+	for i, g := range v.groups {
+		for c := range v.m.cols[i].Names {
+			worst = math.Max(worst, f.Outside(g, c))
+		}
+	}
+	return worst
+}
+
+// random checks the identities of one random term.
+func (k *certificate) random(r lrt.RandomTerm, known bool) error {
+	m, ok := r.Space.(*Model)
+	if !ok {
+		return notLinear(r.Space)
+	}
 	if len(m.eqs) > 0 {
+		return fmt.Errorf("%w: random term %q is a restricted space", lrt.ErrInvalid, r.Name)
+	}
+	z, err := k.j.space(m)
+	if err != nil {
+		return err
+	}
+	if k.byNesting(r, z, known) {
+		return nil
+	}
+	return k.byCoordinates(r, z, known)
+}
+
+// byCoordinates computes the identities of a random term.
+func (k *certificate) byCoordinates(r lrt.RandomTerm, z *view, known bool) error {
+	if err := k.coordinates(); err != nil || !k.out.Exact {
+		return err
+	}
+	zs, length := k.columns(z)
+	cn, rn := k.qn.Spread(zs)
+	k.out.C = append(k.out.C, cn*length)
+	if known {
+		k.check(r.Name, "Pn K Pn = 0", cn+rn)
+		return nil
+	}
+	cd, rd := k.qd.Spread(zs)
+	if k.whole {
+		cd = 0 // K is nil beyond the joint factor, so that c is 0 throughout
+		rd = k.qd.Size(zs)
+	}
+	k.check(r.Name, "Pn K Pn = c Pn", rn)
+	k.check(r.Name, "Pd K Pd = c Pd", rd)
+	if k.qd.Dim() > 0 || k.whole {
+		k.check(r.Name, "one constant c for numerator and error", math.Abs(cn-cd))
+	}
+	k.check(r.Name, "Pn K Pd = 0", k.qn.Cross(k.qd, zs))
+	return nil
+}
+
+// byNesting decides a random term whose space holds the pairs or is held by
+// them; it reports false where that does not tell.
+func (k *certificate) byNesting(r lrt.RandomTerm, z *view, known bool) bool {
+	length, even := k.evenLength(z)
+	constant := func(smaller, larger *view) (float64, bool) {
+		switch {
+		case k.inside(linear(z, smaller), smaller):
+			return 0, true
+		case larger != nil && even && len(larger.m.eqs) == 0 && k.inside(linear(larger, z), z):
+			return length, true
+		}
+		return 0, false
+	}
+	cn, ok := constant(k.s, k.b)
+	if !ok {
 		return false
 	}
-	for _, b := range v.m.cols {
-		if m.find(b) < 0 {
-			return false
-		}
+	if known {
+		k.out.C = append(k.out.C, cn)
+		k.check(r.Name, "Pn K Pn = 0", cn)
+		return true
+	}
+	cd, ok := constant(k.e0, k.e1)
+	switch {
+	case ok:
+	case k.e1 == nil && len(k.e0.m.eqs) == 0 && int(k.j.n) > k.j.factor.Rank:
+		// K is nil beyond the joint factor, so that c must be 0, and Z is not inside E0.
+		k.out.C = append(k.out.C, cn)
+		k.refuse(r.Name, "Pd K Pd = c Pd", k.outside(z, k.e0))
+		return true
+	default:
+		return false
+	}
+	k.out.C = append(k.out.C, cn)
+	if cn != cd {
+		k.refuse(r.Name, "one constant c for numerator and error", 1)
 	}
 	return true
 }
 
-func (j *joint) certifyNumerically(cert *lrt.Certificate, c lrt.Comparison, s, b *view) (*lrt.Certificate, error) {
-	co, ok := j.factor.Coordinate()
+// evenLength returns the squared length that all columns of an index have in
+// common: then ZZᵀ is that multiple of a projection.
+func (k *certificate) evenLength(z *view) (float64, bool) {
+	if len(z.groups) != 1 || z.m.cols[0].dense() {
+		return 0, false
+	}
+	g, length := z.groups[0], 0.0
+	for l := range z.m.cols[0].Names {
+		switch d := k.j.gram.Length(g, l); {
+		case d == 0:
+		case length == 0:
+			length = d
+		case math.Abs(d-length) > 1e-12*length:
+			return 0, false
+		}
+	}
+	return length, length > 0
+}
+
+// coordinates makes both pairs as orthonormal bases.
+func (k *certificate) coordinates() error {
+	if k.co != nil {
+		return nil
+	}
+	co, ok := k.j.factor.Coordinate()
 	if !ok {
-		cert.Exact, cert.Term, cert.Identity = false, "design", "too many columns to check the identities"
-		return cert, nil
+		k.refuse("design", "too many columns to check the identities", 0)
+		return nil
 	}
-	space := func(m lrt.Space) (*linalg.Subspace, error) {
-		v, err := j.space(m.(*Model))
-		if err != nil {
-			return nil, err
-		}
-		return j.subspace(co, v)
-	}
-	ps, err := j.subspace(co, s)
-	if err != nil {
-		return nil, err
-	}
-	pb, err := j.subspace(co, b)
-	if err != nil {
-		return nil, err
-	}
-	e0 := pb
-	var e1 *linalg.Subspace // nil: all rows
-	if c.Error != nil {
-		if e0, err = space(c.Error.Smaller); err != nil {
-			return nil, err
-		}
-		if c.Error.Larger != nil {
-			if e1, err = space(c.Error.Larger); err != nil {
-				return nil, err
-			}
-		}
-	}
-	qn := pb.Minus(ps)
-	var qd *linalg.Subspace
-	all := e1 == nil
-	if all {
-		qd = co.Whole().Minus(e0)
-	} else {
-		qd = e1.Minus(e0)
-	}
-	check := func(term, identity string, residual float64) bool {
-		cert.Residual = max(cert.Residual, residual)
-		if residual > cert.Tol && cert.Exact {
-			refuse(cert, term, identity, residual)
-		}
-		return cert.Exact
-	}
-	check("numerator", "Pn Pd = 0", qn.Overlap(qd))
-	ef := c.Effects
-	if ef == nil {
-		return cert, nil
-	}
-	m1 := e0
-	if ef.Fixed != nil {
-		if m1, err = space(ef.Fixed); err != nil {
-			return nil, err
-		}
-	}
-	check("error", "Pd M1 = 0", qd.Overlap(m1))
-	if ef.NullFixed != nil {
-		m0, err := space(ef.NullFixed)
-		if err != nil {
-			return nil, err
-		}
-		check("numerator", "Pn M0 = 0", qn.Overlap(m0))
-	}
-	cert.C = []float64{1}
-	// Rows beyond the joint factor belong to Pd when the error is all rows.
-	beyond := all && int(j.n) > j.factor.Rank
-	for _, r := range ef.Random {
-		m, ok := r.Space.(*Model)
-		if !ok {
-			return nil, notLinear(r.Space)
-		}
-		gs, err := j.groups(m)
-		if err != nil {
-			return nil, err
-		}
-		cn, rn := qn.Spread(co, gs)
-		cd, rd := qd.Spread(co, gs)
-		if beyond {
-			cd = 0 // K is nil there, so that c must be 0 throughout
-			rd = qd.Size(co, gs)
-		}
-		scale := co.Scale(gs)
-		if scale == 0 {
+	var qs [4]*linalg.Subspace
+	for i, v := range []*view{k.s, k.b, k.e0, k.e1} {
+		if v == nil {
+			qs[i] = co.Whole()
 			continue
 		}
-		cert.C = append(cert.C, cn)
-		check(r.Name, "Pn K Pn = c Pn", rn/scale)
-		check(r.Name, "Pd K Pd = c Pd", rd/scale)
-		if qd.Dim() > 0 || beyond {
-			d := cn - cd
-			if d < 0 {
-				d = -d
-			}
-			check(r.Name, "one constant c for numerator and error", d/scale)
+		var err error
+		if qs[i], err = k.j.subspace(co, v); err != nil {
+			return err
 		}
-		check(r.Name, "Pn K Pd = 0", qn.Cross(qd, co, gs)/scale)
 	}
-	return cert, nil
+	k.co, k.qn, k.qd = co, qs[1].Minus(qs[0]), qs[3].Minus(qs[2])
+	k.whole = k.e1 == nil && int(k.j.n) > k.j.factor.Rank
+	return nil
+}
+
+// columns returns the columns of a random term in coordinates, as asked for up to
+// the constant, which no pair sees, divided by the length of the longest, whose
+// square is returned.
+func (k *certificate) columns(z *view) (zs [][]float64, length float64) {
+	for i, g := range z.groups {
+		b := z.m.cols[i]
+		zs = append(zs, k.j.askedColumns(k.co, g, b)...)
+	}
+	length = largest(zs)
+	if length == 0 {
+		return nil, 0
+	}
+	m := math.Sqrt(length)
+	for _, z := range zs {
+		for t := range z {
+			z[t] /= m
+		}
+	}
+	return zs, length
+}
+
+// largest returns the largest squared length.
+func largest(zs [][]float64) float64 {
+	m := 0.0
+	for _, z := range zs {
+		s := 0.0
+		for _, x := range z {
+			s += x * x
+		}
+		m = math.Max(m, s)
+	}
+	return m
+}
+
+// askedColumns undoes the scale of dense columns and the basis of powers.
+func (j *joint) askedColumns(co *linalg.Coordinates, g int, b *bound) [][]float64 {
+	zs := co.Columns(g)
+	if !b.dense() {
+		return zs
+	}
+	if p := j.basis.powers[g]; p != nil {
+		// x = centre + 2^exp u.
+		out := make([][]float64, len(zs))
+		row := []float64{1}
+		for k := range zs {
+			next := make([]float64, len(row)+1)
+			for i, a := range row {
+				next[i] += a * p.centre
+				next[i+1] += a * math.Ldexp(1, p.exp)
+			}
+			row = next
+			out[k] = make([]float64, len(zs[k]))
+			for i, a := range row[1:] {
+				for t, x := range zs[i] {
+					out[k][t] += a * x
+				}
+			}
+		}
+		return out
+	}
+	d := j.denseColumn(g)
+	for c, z := range zs {
+		for t := range z {
+			z[t] = math.Ldexp(z[t], j.exp[d+c])
+		}
+	}
+	return zs
 }
 
 // subspace returns a view as an orthonormal basis in the coordinates of the joint factor.

@@ -53,27 +53,39 @@ type tally struct {
 // space must be a *Model of this package; all must rest on the same observations.
 // A comparison of models that are not joined joins its own on the fly.
 func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
-	var models []*Model
-	eliminate := true
+	var models, random []*Model
+	effects := false
 	for _, c := range cs {
-		if c.Effects != nil {
-			eliminate = false
-		}
-		if _, err := c.Each(func(s lrt.Space) (lrt.Space, error) {
+		to := &models
+		add := func(s lrt.Space) (lrt.Space, error) {
 			m, ok := s.(*Model)
 			if !ok {
 				return nil, notLinear(s)
 			}
-			models = append(models, m)
+			*to = append(*to, m)
 			return s, nil
-		}); err != nil {
+		}
+		fitted := c
+		if c.Effects != nil {
+			effects = true
+			fitted.Effects = &lrt.Effects{Fixed: c.Effects.Fixed, NullFixed: c.Effects.NullFixed}
+		}
+		if _, err := fitted.Each(add); err != nil {
+			return nil, err
+		}
+		if c.Effects == nil {
+			continue
+		}
+		to = &random
+		rest := lrt.Comparison{Name: c.Name, Effects: &lrt.Effects{Random: c.Effects.Random}}
+		if _, err := rest.Each(add); err != nil {
 			return nil, err
 		}
 	}
 	if len(models) == 0 {
 		return nil, fmt.Errorf("glm: %w: nothing to join", lrt.ErrInvalid)
 	}
-	j, err := newJoint(ctx, models, eliminate)
+	j, err := newJoint(ctx, models, !effects || unionColumns(models, random) > linalg.MaxCoordinates, random...)
 	if err != nil {
 		return nil, err
 	}
@@ -91,19 +103,40 @@ func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
 	return out, nil
 }
 
-// newJoint factors the columns of the models.
-func newJoint(ctx context.Context, models []*Model, eliminate bool) (*joint, error) {
-	j := new(joint)
-	return j, j.init(ctx, models, eliminate)
+// unionColumns counts the columns that the models name, each once.
+func unionColumns(lists ...[]*Model) int {
+	var all joint
+	n := 0
+	for _, models := range lists {
+		for _, m := range models {
+			for _, b := range m.cols {
+				if all.group(b) < 0 {
+					all.cols = append(all.cols, b)
+					n += len(b.Names)
+				}
+			}
+		}
+	}
+	return n
 }
 
-func (j *joint) init(ctx context.Context, models []*Model, eliminate bool) error {
+// newJoint factors the columns of the models, and of the random terms of a
+// comparison, which are not fitted and need no constant.
+func newJoint(ctx context.Context, models []*Model, eliminate bool, random ...*Model) (*joint, error) {
+	j := new(joint)
+	return j, j.init(ctx, models, eliminate, random...)
+}
+
+func (j *joint) init(ctx context.Context, models []*Model, eliminate bool, random ...*Model) error {
 	first := models[0]
 	*j = joint{src: first.src, response: first.response, opt: first.opt, at: first.at, ws: j.ws, cols: j.cols[:0],
 		basis: basis{shift: j.shift[:0], exp: j.exp[:0]}}
 	j.shifted = true
-	largest := 0
-	for _, m := range models {
+	largest, fitted := 0, len(models)
+	if len(random) > 0 {
+		models = append(models[:fitted:fitted], random...)
+	}
+	for i, m := range models {
 		if err := first.obs.Check(m.obs); err != nil {
 			return err
 		}
@@ -118,7 +151,7 @@ func (j *joint) init(ctx context.Context, models []*Model, eliminate bool) error
 			}
 		}
 		largest = max(largest, p)
-		if m.carrier() < 0 {
+		if i < fitted && m.carrier() < 0 {
 			j.shifted = false
 		}
 		if m.opt.Offset != "" && j.offset(m.opt.Offset) == 0 {

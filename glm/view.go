@@ -189,7 +189,8 @@ func (j *joint) pair(c lrt.Comparison) (lrt.Pair, error) {
 	if l.Numerator, err = j.between(s, b); err != nil {
 		return p, err
 	}
-	if err := j.errorPair(c, l, s, b); err != nil {
+	e0, e1, err := j.errorPair(c, l, s, b)
+	if err != nil {
 		return p, err
 	}
 	tiny := j.nilBelow()
@@ -197,7 +198,7 @@ func (j *joint) pair(c lrt.Comparison) (lrt.Pair, error) {
 	if l.Nil {
 		l.Denominator = 0
 	}
-	cert, err := j.certify(c, s, b)
+	cert, err := j.certify(c, s, b, e0, e1)
 	if err != nil {
 		return p, err
 	}
@@ -207,21 +208,19 @@ func (j *joint) pair(c lrt.Comparison) (lrt.Pair, error) {
 	return p, nil
 }
 
-// errorPair fills in the denominator.
-func (j *joint) errorPair(c lrt.Comparison, l *lrt.Linear, s, b *view) error {
-	e0 := b
-	var e1 *view
+// errorPair fills in the denominator and returns its spaces; a larger one of nil is all rows.
+func (j *joint) errorPair(c lrt.Comparison, l *lrt.Linear, s, b *view) (e0, e1 *view, err error) {
+	e0 = b
 	if c.Error != nil {
-		var err error
 		if e0, err = j.space(c.Error.Smaller.(*Model)); err != nil {
-			return &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
+			return nil, nil, &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
 		}
 		if c.Error.Larger != nil {
 			if e1, err = j.space(c.Error.Larger.(*Model)); err != nil {
-				return &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
+				return nil, nil, &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
 			}
 			if _, err = j.nested(e0, e1); err != nil {
-				return &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
+				return nil, nil, &lrt.ComparisonError{Comparison: c.Name, Place: "error", Err: err}
 			}
 		}
 	}
@@ -232,9 +231,8 @@ func (j *joint) errorPair(c lrt.Comparison, l *lrt.Linear, s, b *view) error {
 		l.Denominator = e0.rss.Float64()
 	} else {
 		l.RankE1 = e1.rank
-		var err error
 		if l.Denominator, err = j.between(e0, e1); err != nil {
-			return err
+			return nil, nil, err
 		}
 	}
 	l.Denominator = math.Max(l.Denominator, 0)
@@ -242,7 +240,7 @@ func (j *joint) errorPair(c lrt.Comparison, l *lrt.Linear, s, b *view) error {
 		l.Stratum = true
 		l.M = float64(l.RankB - l.RankS + l.RankE1 - l.RankE0)
 	}
-	return nil
+	return e0, e1, nil
 }
 
 func sameGroups(a, b *view) bool {

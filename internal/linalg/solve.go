@@ -294,17 +294,27 @@ func (f *Factor) Between(rhs, lo, hi int) dd.DD {
 // Outside returns the part of a column of any group that the space leaves,
 // relative to the column's norm; 0 for a zero column.
 func (f *Factor) Outside(group, column int) float64 {
-	c, norm := f.g.crossVec(group, column)
-	if norm.Hi <= 0 {
-		return 0
-	}
-	h, _, _ := f.Half(c)
-	left := norm.Sub(h.Dot(h))
-	if left.Hi <= 0 {
+	in, norm := f.Inside(group, column)
+	left := norm.Sub(in)
+	if norm.Hi <= 0 || left.Hi <= 0 {
 		return 0
 	}
 	return math.Sqrt(left.Hi / norm.Hi)
 }
+
+// Inside returns the squared length of the projection of a column of any group
+// on the space, and that of the column.
+func (f *Factor) Inside(group, column int) (in, norm dd.DD) {
+	c, norm := f.g.crossVec(group, column)
+	if norm.Hi <= 0 {
+		return dd.DD{}, norm
+	}
+	h, _, _ := f.Half(c)
+	return h.Dot(h), norm
+}
+
+// Length returns the squared length of a column of an index group.
+func (g *Gram) Length(group, level int) float64 { return g.diag[g.index[group]][level].Hi }
 
 // crossVec returns the cross-products of one column with all, and its squared norm.
 func (g *Gram) crossVec(group, column int) (Vec, dd.DD) {

@@ -10,13 +10,13 @@ type Coordinates struct {
 	cols [][]float64 // by column of the rest
 }
 
-// maxCoordinates is the largest dimension for which subspaces are formed.
-const maxCoordinates = 800
+// MaxCoordinates is the largest dimension for which subspaces are formed.
+const MaxCoordinates = 800
 
 // Coordinate returns the coordinates of all columns, ok = false where a group
 // was eliminated or the dimension is too large.
 func (f *Factor) Coordinate() (*Coordinates, bool) {
-	if f.elim >= 0 || len(f.piv) > maxCoordinates {
+	if f.elim >= 0 || len(f.piv) > MaxCoordinates {
 		return nil, false
 	}
 	c := &Coordinates{f: f, dim: len(f.piv)}
@@ -57,15 +57,13 @@ func (c *Coordinates) Of(b Vec) []float64 {
 	return v
 }
 
-// Scale returns the largest squared length of a column of the groups.
-func (c *Coordinates) Scale(groups []int) float64 {
-	s := 0.0
-	for _, g := range groups {
-		for _, z := range c.group(g) {
-			s = math.Max(s, inner(z, z))
-		}
+// Columns returns copies of the columns of a group.
+func (c *Coordinates) Columns(g int) [][]float64 {
+	var out [][]float64
+	for _, z := range c.group(g) {
+		out = append(out, append([]float64(nil), z...))
 	}
-	return s
+	return out
 }
 
 // Subspace is an orthonormal basis in the coordinates of a joint factor.
@@ -162,12 +160,8 @@ func (s *Subspace) Overlap(t *Subspace) float64 {
 	return m
 }
 
-// images returns Zᵀq for each basis vector q.
-func (s *Subspace) images(c *Coordinates, groups []int) [][]float64 {
-	var zs [][]float64
-	for _, g := range groups {
-		zs = append(zs, c.group(g)...)
-	}
+// images returns Zᵀq for each basis vector q, zs being the columns of Z.
+func (s *Subspace) images(zs [][]float64) [][]float64 {
 	out := make([][]float64, len(s.basis))
 	for i, q := range s.basis {
 		out[i] = make([]float64, len(zs))
@@ -179,8 +173,8 @@ func (s *Subspace) images(c *Coordinates, groups []int) [][]float64 {
 }
 
 // Spread returns the constant c nearest to QᵀZZᵀQ = cI and the largest departure from it.
-func (s *Subspace) Spread(co *Coordinates, groups []int) (c, residual float64) {
-	im := s.images(co, groups)
+func (s *Subspace) Spread(zs [][]float64) (c, residual float64) {
+	im := s.images(zs)
 	if len(im) == 0 {
 		return 0, 0
 	}
@@ -199,18 +193,18 @@ func (s *Subspace) Spread(co *Coordinates, groups []int) (c, residual float64) {
 	return c, residual
 }
 
-// Size returns the largest element of QᵀZZᵀQ.
-func (s *Subspace) Size(co *Coordinates, groups []int) float64 {
+// Size returns the largest diagonal element of QᵀZZᵀQ, which bounds all of them.
+func (s *Subspace) Size(zs [][]float64) float64 {
 	m := 0.0
-	for _, v := range s.images(co, groups) {
+	for _, v := range s.images(zs) {
 		m = math.Max(m, inner(v, v))
 	}
 	return m
 }
 
 // Cross returns the largest element of QᵀZZᵀU.
-func (s *Subspace) Cross(t *Subspace, co *Coordinates, groups []int) float64 {
-	a, b := s.images(co, groups), t.images(co, groups)
+func (s *Subspace) Cross(t *Subspace, zs [][]float64) float64 {
+	a, b := s.images(zs), t.images(zs)
 	m := 0.0
 	for _, v := range a {
 		for _, w := range b {
