@@ -30,7 +30,7 @@ func machine(b *testing.B) {
 	})
 }
 
-// BenchmarkTail times upper tails at the 5 % point, the centre (half) and far out (1e-20), and the
+// BenchmarkTail times upper tails at the 5 % point, the centre (0.6) and far out (1e-20), and the
 // lower tail at the same points, with gonum's where it has the law.
 func BenchmarkTail(b *testing.B) {
 	machine(b)
@@ -57,11 +57,8 @@ func BenchmarkTail(b *testing.B) {
 		for _, at := range []struct {
 			name string
 			q    float64
-		}{{"5%", 0.05}, {"centre", 0.5}, {"far", 1e-20}} {
+		}{{"5%", 0.05}, {"centre", 0.6}, {"far", 1e-20}} {
 			x := c.law.UpperQuantile(at.q)
-			if at.q == 0.5 {
-				x *= 0.97
-			}
 			b.Run(c.name+"/"+at.name+"/upper", func(b *testing.B) {
 				b.ReportAllocs()
 				switch law := c.law.(type) {

@@ -29,10 +29,10 @@ type SpeedPoint struct {
 
 type survival interface{ Survival(float64) float64 }
 
-// upper times a law's upper tail at its 5 % point, a little below the median and at the tail 1e-20.
+// upper times a law's upper tail at its 5 % point, at the tail 0.6 and at the tail 1e-20.
 func upper(law dist.Law, peer survival, goal float64) Speed {
 	s := Speed{Name: law.String() + " upper tail", F: law.Survival, Points: []SpeedPoint{
-		{"5 %", law.UpperQuantile(0.05), goal}, {"centre", 0.97 * law.UpperQuantile(0.5), goal}, {"far", law.UpperQuantile(1e-20), goal},
+		{"5 %", law.UpperQuantile(0.05), goal}, {"centre", law.UpperQuantile(0.6), goal}, {"far", law.UpperQuantile(1e-20), goal},
 	}}
 	if peer != nil {
 		s.Peer = peer.Survival

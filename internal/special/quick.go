@@ -7,15 +7,15 @@ import (
 )
 
 // The quick path gives tails and densities inside the normal range to about 2^-60 in the
-// prefactor and a few tenths of an ulp in the sum or continued fraction, for shape
-// parameters up to quickMax. Its answers are ordinary pairs hi + lo, as Scaled with L = 0.
+// prefactor and a few tenths of an ulp in the sum or continued fraction. Its answers are
+// ordinary pairs hi + lo, as Scaled with L = 0.
 
-// quickMax bounds the shape parameters of the quick path: a log(x/a) is then right to
-// 40 sqrt(a) 2^-66 < 2^-56.
-const quickMax = 1000
-
-// quickLarge bounds the larger shape parameter of the beta law there.
-const quickLarge = 1e13
+// quickMax is where continued fractions become slow near the mode (of the smaller parameter for
+// the beta law) and Mills' ratio takes over; quickLarge bounds the parameters of the quick path.
+const (
+	quickMax   = 1000
+	quickLarge = 1e13
+)
 
 // fractionMax bounds the levels of a continued fraction.
 const fractionMax = 128
@@ -99,13 +99,33 @@ func gammaQuickKernel(a float64, x dd.DD) (l acc, m dd.DD) {
 		l.add(-g, -gl)
 		return l, dd.DD{Hi: a}
 	}
-	lr := dd.LogQuick(divPair(x, dd.DD{Hi: a}))
-	l.addProd(a, lr.Hi, lr.Lo)
-	d, e := dd.TwoSum(a, -x.Hi)
-	l.add(d, e-x.Lo)
+	d, e := dd.TwoSum(x.Hi, -a)
+	v := devianceQuick(divPair(dd.DD{Hi: d, Lo: e + x.Lo}, dd.DD{Hi: a}), x, dd.DD{Hi: a})
+	l.addProd(-a, v.Hi, v.Lo)
 	l.add(-stirlingQuick(a), 0)
 	return l, sqrtPair(mulPair(dd.DD{Hi: a}, invTwoPi))
 }
+
+// devianceQuick returns u - log(1+u) with relative error below 2^-63, where 1 + u = p/q.
+func devianceQuick(u, p, q dd.DD) dd.DD {
+	if math.Abs(u.Hi) > 0.1 {
+		g := dd.LogQuick(divPair(p, q))
+		h, l := dd.TwoSum(u.Hi, -g.Hi)
+		return dd.DD{Hi: h, Lo: l + (u.Lo - g.Lo)}
+	}
+	// s (u - 2 s² (1/3 + s²/5 + ...)), s = u/(2+u): the first two terms with their low parts.
+	h, l := dd.QuickTwoSum(2, u.Hi)
+	s := divPair(u, dd.DD{Hi: h, Lo: l + u.Lo})
+	s2 := mulPair(s, s)
+	r := s2.Hi
+	t := r * (1.0/5 + r*(1.0/7+r*(1.0/9+r*(1.0/11+r*(1.0/13+r*(1.0/15))))))
+	w := mulPair(s2, third)
+	h, l = dd.TwoSum(u.Hi, -2*w.Hi)
+	return mulPair(s, dd.DD{Hi: h, Lo: l + (u.Lo - 2*(w.Lo+r*t))})
+}
+
+// third = 1/3.
+var third = dd.DD{Hi: 1.0 / 3, Lo: 0x1.5555555555555p-56}
 
 // invTwoPi = 1/(2 pi).
 var invTwoPi = dd.DD{Hi: 0x1.45f306dc9c883p-3, Lo: -0x1.6b01ec5417056p-57}
@@ -120,7 +140,7 @@ func quickScaled(l acc, m dd.DD) (Scaled, bool) {
 
 // quickGammaKernel is GammaKernel on the quick path.
 func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
-	if !(a >= 1e-6 && a <= quickMax && x.Hi > 1e-280 && x.Hi < 1e6) {
+	if !(a >= 1e-6 && a <= quickLarge && x.Hi > 1e-280 && x.Hi < 1e14) {
 		return Scaled{}, false
 	}
 	return quickScaled(gammaQuickKernel(a, x))
@@ -134,7 +154,7 @@ func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
 //	a < x < 2.5       upper: complement of the series, more terms in double-double
 //	x > a             upper: continued fraction (DLMF 8.9.2, even part)
 func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
-	if !(a >= 1e-3 && a <= quickMax && x.Hi > 1e-280 && x.Hi < 1e6) {
+	if !(a >= 1e-3 && a <= quickLarge && x.Hi > 1e-280 && x.Hi < 1e14) {
 		return Scaled{}, false, false
 	}
 	x0 := x.Hi
@@ -145,6 +165,12 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	f, ok := quickScaled(l, m)
 	if !ok {
 		return Scaled{}, false, false
+	}
+	if a > quickMax && x0 > 0.5*a && x0 < 2*a {
+		d, e := dd.TwoSum(x0, -a)
+		d += e + x.Lo
+		f.M = f.M.MulF(gammaMills(math.Abs(d), x0, d > 0))
+		return f, d > 0, true
 	}
 	if x0 <= a {
 		if x0 > 0.25*(a+1) {

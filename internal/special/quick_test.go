@@ -38,6 +38,9 @@ func TestQuickGamma(t *testing.T) {
 	worst, answered, n := 0.0, 0, 30000
 	for range n {
 		a := shape(r)
+		if r.IntN(5) == 0 {
+			a = logUniform(r, 1000, 1e12)
+		}
 		x := a + math.Sqrt(a)*6*r.NormFloat64()
 		if x <= 0 || r.IntN(3) == 0 {
 			x = logUniform(r, 1e-8, 600)
@@ -73,6 +76,8 @@ func TestQuickBeta(t *testing.T) {
 			a = logUniform(r, 1000, 1e12)
 		case 1:
 			b = logUniform(r, 1000, 1e12)
+		case 2:
+			a, b = logUniform(r, 1000, 1e12), logUniform(r, 1000, 1e12)
 		}
 		s := a + b
 		x := a/s + 6*r.NormFloat64()*math.Sqrt(a*b/s/s/(s+1))

@@ -22,17 +22,21 @@ func lgammaBig(a dd.DD) (hi, lo float64) {
 	return l.hi, l.lo
 }
 
-// betaQuickKernel returns x^a y^b / B(a, b) as exp(l) m, for min(a, b) <= quickMax: logarithms that are
-// multiplied by the larger parameter are near 0 and relatively right.
+// betaQuickKernel returns x^a y^b / B(a, b) as exp(l) m. Logarithms that are multiplied by a
+// large parameter are near 0 and relatively right.
 func betaQuickKernel(a, b float64, x, y dd.DD) (l acc, m dd.DD) {
 	s := dd.Sum(a, b)
 	lo, hi := min(a, b), max(a, b)
 	if lo >= stirlingMin {
-		// a log(x s/a) + b log(y s/b)
-		u := dd.LogQuick(divPair(mulPair(x, s), dd.DD{Hi: a}))
-		v := dd.LogQuick(divPair(mulPair(y, s), dd.DD{Hi: b}))
-		l.addProd(a, u.Hi, u.Lo)
-		l.addProd(b, v.Hi, v.Lo)
+		// With n = x b - y a: deviance a (u - log(1+u)) + b (v - log(1+v)), u = n/a, v = -n/b.
+		n := mulPair(x, dd.DD{Hi: b})
+		m := mulPair(y, dd.DD{Hi: a})
+		h, e := dd.TwoSum(n.Hi, -m.Hi)
+		n = dd.DD{Hi: h, Lo: e + (n.Lo - m.Lo)}
+		u := devianceQuick(divPair(n, dd.DD{Hi: a}), mulPair(x, s), dd.DD{Hi: a})
+		v := devianceQuick(divPair(n, dd.DD{Hi: -b}), mulPair(y, s), dd.DD{Hi: b})
+		l.addProd(-a, u.Hi, u.Lo)
+		l.addProd(-b, v.Hi, v.Lo)
 		l.add(stirlingQuick(s.Hi)-stirlingQuick(a)-stirlingQuick(b), 0)
 		return l, sqrtPair(mulPair(divPair(dd.Prod(a, b), s), invTwoPi))
 	}
@@ -77,7 +81,7 @@ func log1mQuick(x dd.DD) dd.DD {
 
 // quickBetaKernel is BetaKernel on the quick path.
 func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
-	if !(min(a, b) >= 1e-6 && min(a, b) <= quickMax && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
+	if !(min(a, b) >= 1e-6 && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
 		return Scaled{}, false
 	}
 	return quickScaled(betaQuickKernel(a, b, x, y))
@@ -91,7 +95,7 @@ func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
 //	otherwise                                        continued fraction of Didonato and Morris (1992); left
 //	                                                 to the full path where it is slow (x near 1)
 func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
-	if !(min(a, b) >= 1e-3 && min(a, b) <= quickMax && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
+	if !(min(a, b) >= 1e-3 && max(a, b) <= quickLarge && min(x.Hi, y.Hi) > 1e-280) {
 		return Scaled{}, false, false
 	}
 	var c acc
@@ -123,6 +127,10 @@ func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
 		}
 		v := 1 - p.Hi
 		return Scaled{M: dd.DD{Hi: v, Lo: ((1 - v) - p.Hi) - p.Lo}}, upper, true
+	}
+	if min(a, b) > quickMax && r > 0.6 {
+		f.M = f.M.MulF(betaMills(c.hi+c.lo, s.Hi, x.Hi, y.Hi))
+		return f, upper, true
 	}
 	w, ok := betaFraction(a, b, s.Hi, c, x)
 	f.M = divPair(f.M, w)
