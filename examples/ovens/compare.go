@@ -5,7 +5,9 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 
+	"subsume.example/anova"
 	"subsume.example/glm"
 	"subsume.example/lrt"
 )
@@ -15,7 +17,7 @@ type models struct {
 	small, full       *glm.Model
 	smallFit, fullFit *glm.Fit
 	result            lrt.Result
-	table             []lrt.Result // rows of the table, each against the error of the full model
+	table             anova.Table
 }
 
 // terms are those of the small model: the constant and the covariates.
@@ -60,31 +62,12 @@ func (s *study) compare(ctx context.Context) error {
 
 // tabulate compares each term with what stands before it, all on one factorization.
 func (s *study) tabulate(ctx context.Context) error {
-	spaces, names := []lrt.Space{}, []string{}
-	for i := range s.covariates {
-		m, err := glm.Normal(ctx, s.data, s.response, s.terms()[:i+1], nil)
-		if err != nil {
-			return err
-		}
-		spaces, names = append(spaces, m), append(names, s.covariates[i])
-	}
-	spaces, names = append(spaces, s.small, s.full), append(names, s.group)
-	steps := lrt.Steps(spaces, true)
-	for i := range steps {
-		steps[i].Name = names[i]
-	}
-	steps, err := glm.Join(ctx, steps...)
+	rows, err := anova.OneWay(ctx, s.data, s.response, s.group, &anova.Options{Covariates: s.covariates})
 	if err != nil {
 		return err
 	}
-	for _, c := range steps {
-		r, err := c.Run(ctx, s.settings())
-		if err != nil {
-			return err
-		}
-		s.table = append(s.table, r)
-	}
-	return nil
+	s.table, err = anova.Tabulate(ctx, rows, s.settings())
+	return err
 }
 
 // explain says in the words of the file what a refused comparison means.
@@ -150,22 +133,8 @@ func (s *study) writeComparison(p *page) {
 // writeTable writes the sequential table.
 func (s *study) writeTable(p *page) {
 	p.title("Table")
-	t := p.table("lrrrrr")
-	t.row("source", "sum of squares", "df", "mean square", "F", "p")
-	for i, r := range s.table {
-		l := r.Pair.Linear
-		d1, _ := l.DF()
-		ss := sumOfSquares(l)
-		name := r.Comparison.Name
-		if i > 0 {
-			name += ", after " + and(s.covariates[:i])
-		}
-		t.row(name, fig(ss, 6), fmt.Sprint(d1), fig(ss/d1, 6), fig(r.Exact.Statistic, 5), prob(r.Exact.P, r.Exact.LogP))
-	}
-	f := s.fullFit
-	t.row("error", fig(f.RSS, 6), fmt.Sprint(f.DFError), fig(f.RSS/float64(f.DFError), 6), "", "")
-	t.row("total about the mean", fig(f.TotalSS, 6), fmt.Sprint(f.N-1), "", "", "")
-	t.end()
+	_, body, _ := strings.Cut(s.table.String(), "\n") // without its title
+	p.b.WriteString(body)
 }
 
 // sumOfSquares is the numerator in the units of the response.

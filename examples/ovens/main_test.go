@@ -85,19 +85,21 @@ func TestRecord(t *testing.T) {
 		t.Fatal(err)
 	}
 	n := r.Numbers
-	if want := float64(n.NumeratorMS / n.DenominatorMS); math.Abs(float64(n.F)/want-1) > 1e-13 {
+	if want := n.NumeratorMS / n.DenominatorMS; math.Abs(n.F/want-1) > 1e-13 {
 		t.Errorf("F = %v, mean squares give %v", n.F, want)
 	}
-	if want := float64(r.Data.RowsUsed) * math.Log1p(float64(n.F*n.NumeratorDF/n.DenominatorDF)); math.Abs(float64(n.ChiSquared)/want-1) > 1e-14 {
+	if want := float64(r.Data.RowsUsed) * math.Log1p(n.F*n.NumeratorDF/n.DenominatorDF); math.Abs(n.ChiSquared/want-1) > 1e-14 {
 		t.Errorf("−2 log λ = %v, n log(1 + F d1/d2) = %v", n.ChiSquared, want)
 	}
 	if len(r.Data.Dropped) != 1 || len(r.Data.Digest) != 64 || r.Data.RowsRead != 312 || r.Data.RowsUsed != 311 {
 		t.Errorf("data %+v", r.Data)
 	}
-	for _, a := range r.NotFinite {
-		if !strings.HasPrefix(a.Path, "checks[") {
-			t.Errorf("%s is %s", a.Path, a.Reason)
-		}
+	before, _, _ := strings.Cut(string(first), `"checks"`)
+	if strings.Contains(before, "_reason\"") {
+		t.Errorf("a number before the checks is not finite:\n%s", before)
+	}
+	if last := r.Table[len(r.Table)-1]; last.F != n.F || last.P != n.P || last.SS != n.NumeratorSS {
+		t.Errorf("table %+v and comparison %+v disagree", last, n)
 	}
 }
 

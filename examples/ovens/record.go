@@ -1,8 +1,9 @@
 package main
 
 // record is what somebody needs who has to defend the answer, or to work it
-// again: no clock, no path, no rounding. The fields are a promise; new ones may
-// be added.
+// again: no clock, no path, no rounding. A number that is NaN or infinite is
+// null, and a field of its name with "_reason" added says which. The fields are a
+// promise; new ones may be added.
 type record struct {
 	Schema       string          `json:"schema"`
 	Hypothesis   recHypothesis   `json:"hypothesis"`
@@ -19,7 +20,6 @@ type record struct {
 	Plan         *recPlan        `json:"plan"`
 	Conclusion   []string        `json:"conclusion"`
 	Reproduction recReproduction `json:"reproduction"`
-	NotFinite    []absence       `json:"not_finite"`
 }
 
 type recHypothesis struct {
@@ -72,61 +72,62 @@ type recLevel struct {
 }
 
 type recMethod struct {
-	Statistic  string `json:"statistic"`
-	Reference  string `json:"reference"`
-	Kind       string `json:"kind"`
-	Why        string `json:"why"`
-	Certified  bool   `json:"certified_exact"`
-	Side       string `json:"side"`
-	Level      figure `json:"confidence_level"`
-	Dispersion string `json:"dispersion"`
-	Weights    string `json:"weights"`
-	Offset     string `json:"offset"`
-	Link       string `json:"link"`
-	Coding     string `json:"contrast_coding"`
+	Statistic  string  `json:"statistic"`
+	Reference  string  `json:"reference"`
+	Kind       string  `json:"kind"`
+	Why        string  `json:"why"`
+	Certified  bool    `json:"certified_exact"`
+	Side       string  `json:"side"`
+	Level      float64 `json:"confidence_level"`
+	Dispersion string  `json:"dispersion"`
+	Weights    string  `json:"weights"`
+	Offset     string  `json:"offset"`
+	Link       string  `json:"link"`
+	Coding     string  `json:"contrast_coding"`
 }
 
 type recNumbers struct {
-	Restricted     recFit `json:"restricted"`
-	Full           recFit `json:"full"`
-	NumeratorDF    figure `json:"numerator_df"`
-	DenominatorDF  figure `json:"denominator_df"`
-	NumeratorSS    figure `json:"numerator_sum_of_squares"`
-	NumeratorMS    figure `json:"numerator_mean_square"`
-	DenominatorMS  figure `json:"denominator_mean_square"`
-	F              figure `json:"f"`
-	P              figure `json:"p"`
-	LogP           figure `json:"log_p"`
-	Critical       figure `json:"critical_value"`
-	Noncentrality  figure `json:"noncentrality_estimate"`
-	LogLambda      figure `json:"log_lambda"`
-	Lambda         figure `json:"lambda"`
-	LambdaOf       string `json:"lambda_of"`
-	ChiSquared     figure `json:"minus_two_log_lambda"`
-	ChiSquaredDF   figure `json:"chi_squared_df"`
-	ChiSquaredP    figure `json:"chi_squared_p"`
-	ChiSquaredLogP figure `json:"chi_squared_log_p"`
-	ChiSquaredTrue figure `json:"chi_squared_true_size"`
+	Restricted     recFit  `json:"restricted"`
+	Full           recFit  `json:"full"`
+	NumeratorDF    float64 `json:"numerator_df"`
+	DenominatorDF  float64 `json:"denominator_df"`
+	NumeratorSS    float64 `json:"numerator_sum_of_squares"`
+	NumeratorMS    float64 `json:"numerator_mean_square"`
+	DenominatorMS  float64 `json:"denominator_mean_square"`
+	F              float64 `json:"f"`
+	P              float64 `json:"p"`
+	LogP           float64 `json:"log_p"`
+	Critical       float64 `json:"critical_value"`
+	Noncentrality  float64 `json:"noncentrality_estimate"`
+	LogLambda      float64 `json:"log_lambda"`
+	Lambda         float64 `json:"lambda"`
+	LambdaOf       string  `json:"lambda_of"`
+	ChiSquared     float64 `json:"minus_two_log_lambda"`
+	ChiSquaredDF   float64 `json:"chi_squared_df"`
+	ChiSquaredP    float64 `json:"chi_squared_p"`
+	ChiSquaredLogP float64 `json:"chi_squared_log_p"`
+	ChiSquaredTrue float64 `json:"chi_squared_true_size"`
 }
 
 type recFit struct {
-	N             int    `json:"n"`
-	Rank          int    `json:"rank"`
-	ErrorDF       int    `json:"error_df"`
-	RSS           figure `json:"residual_sum_of_squares"`
-	SD            figure `json:"residual_sd"`
-	LogLikelihood figure `json:"log_likelihood"`
+	N             int     `json:"n"`
+	Rank          int     `json:"rank"`
+	ErrorDF       int     `json:"error_df"`
+	RSS           float64 `json:"residual_sum_of_squares"`
+	SD            float64 `json:"residual_sd"`
+	LogLikelihood float64 `json:"log_likelihood"`
 }
 
 type recRow struct {
-	Name string `json:"name"`
-	SS   figure `json:"sum_of_squares"`
-	DF   figure `json:"df"`
-	MS   figure `json:"mean_square"`
-	F    figure `json:"f"`
-	P    figure `json:"p"`
-	LogP figure `json:"log_p"`
-	Kind string `json:"kind"`
+	Name       string  `json:"name"`
+	Hypothesis string  `json:"hypothesis"`
+	SS         float64 `json:"sum_of_squares"`
+	DF         float64 `json:"df"`
+	MS         float64 `json:"mean_square"`
+	F          float64 `json:"f"`
+	P          float64 `json:"p"`
+	LogP       float64 `json:"log_p"`
+	Kind       string  `json:"kind"`
 }
 
 type recEstimates struct {
@@ -136,28 +137,28 @@ type recEstimates struct {
 }
 
 type recValue struct {
-	Name  string `json:"name"`
-	Value figure `json:"value"`
+	Name  string  `json:"name"`
+	Value float64 `json:"value"`
 }
 
 type recMean struct {
-	Group string `json:"group"`
-	Value figure `json:"value"`
-	SE    figure `json:"standard_error"`
-	Lower figure `json:"lower"`
-	Upper figure `json:"upper"`
+	Group string  `json:"group"`
+	Value float64 `json:"value"`
+	SE    float64 `json:"standard_error"`
+	Lower float64 `json:"lower"`
+	Upper float64 `json:"upper"`
 }
 
 type recPair struct {
-	Over  string `json:"over"`
-	Under string `json:"under"`
-	Value figure `json:"difference"`
-	SE    figure `json:"standard_error"`
-	T     figure `json:"t"`
-	P     figure `json:"p_raw"`
-	Joint figure `json:"p_adjusted"`
-	Lower figure `json:"lower_simultaneous"`
-	Upper figure `json:"upper_simultaneous"`
+	Over  string  `json:"over"`
+	Under string  `json:"under"`
+	Value float64 `json:"difference"`
+	SE    float64 `json:"standard_error"`
+	T     float64 `json:"t"`
+	P     float64 `json:"p_raw"`
+	Joint float64 `json:"p_adjusted"`
+	Lower float64 `json:"lower_simultaneous"`
+	Upper float64 `json:"upper_simultaneous"`
 }
 
 type recMultiplicity struct {
@@ -168,13 +169,13 @@ type recMultiplicity struct {
 }
 
 type recCheck struct {
-	Name      string `json:"name"`
-	Statistic string `json:"statistic"`
-	Value     figure `json:"value"`
-	P         figure `json:"p"`
-	Reference string `json:"reference"`
-	Line      int    `json:"line,omitempty"`
-	Note      string `json:"note,omitempty"`
+	Name      string  `json:"name"`
+	Statistic string  `json:"statistic"`
+	Value     float64 `json:"value"`
+	P         float64 `json:"p"`
+	Reference string  `json:"reference"`
+	Line      int     `json:"line,omitempty"`
+	Note      string  `json:"note,omitempty"`
 }
 
 type recWarning struct {
@@ -183,24 +184,24 @@ type recWarning struct {
 }
 
 type recPlan struct {
-	Difference    figure `json:"difference_of_interest"`
-	SD            figure `json:"expected_sd"`
-	Alpha         figure `json:"alpha"`
-	Noncentrality figure `json:"noncentrality"`
-	Power         figure `json:"power_of_this_design"`
-	Wanted        figure `json:"wanted_power"`
-	Detectable    figure `json:"detectable_difference"`
-	Each          int    `json:"rows_a_group_for_wanted_power"`
+	Difference    float64 `json:"difference_of_interest"`
+	SD            float64 `json:"expected_sd"`
+	Alpha         float64 `json:"alpha"`
+	Noncentrality float64 `json:"noncentrality"`
+	Power         float64 `json:"power_of_this_design"`
+	Wanted        float64 `json:"wanted_power"`
+	Detectable    float64 `json:"detectable_difference"`
+	Each          int     `json:"rows_a_group_for_wanted_power"`
 }
 
 type recReproduction struct {
-	Library       string `json:"library_version"`
-	Go            string `json:"go_version"`
-	Arch          string `json:"goarch"`
-	Seed          uint64 `json:"seed"`
-	Draws         int    `json:"draws"`
-	RankTolerance figure `json:"rank_tolerance"`
-	SmallestKept  figure `json:"smallest_pivot_kept"`
-	LargestAside  figure `json:"largest_pivot_set_aside"`
-	Fitting       string `json:"fitting"`
+	Library       string  `json:"library_version"`
+	Go            string  `json:"go_version"`
+	Arch          string  `json:"goarch"`
+	Seed          uint64  `json:"seed"`
+	Draws         int     `json:"draws"`
+	RankTolerance float64 `json:"rank_tolerance"`
+	SmallestKept  float64 `json:"smallest_pivot_kept"`
+	LargestAside  float64 `json:"largest_pivot_set_aside"`
+	Fitting       string  `json:"fitting"`
 }

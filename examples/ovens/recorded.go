@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 	"runtime"
@@ -10,6 +11,7 @@ import (
 
 	"subsume.example/dist"
 	"subsume.example/glm"
+	"subsume.example/internal/canon"
 	"subsume.example/lrt"
 )
 
@@ -19,7 +21,7 @@ func (s *study) saveRecord(path string, out io.Writer) error {
 	if err != nil {
 		return err
 	}
-	b, err := encode(r)
+	b, err := canon.Indent(r)
 	if err != nil {
 		return err
 	}
@@ -59,7 +61,7 @@ func (s *study) recorded() (*record, error) {
 	f := s.fullFit
 	r.Reproduction = recReproduction{
 		Library: libraryVersion(), Go: runtime.Version(), Arch: runtime.GOARCH, Seed: s.seed, Draws: s.outlying.draws,
-		RankTolerance: figure(f.Tolerance), SmallestKept: figure(f.SmallestKept), LargestAside: figure(f.LargestAside),
+		RankTolerance: f.Tolerance, SmallestKept: f.SmallestKept, LargestAside: f.LargestAside,
 		Fitting: "orthogonal factorization, no iterations; the check of equal spread is iterated to a checked maximum",
 	}
 	return r, nil
@@ -108,45 +110,45 @@ func (s *study) recordNumbers(r *record) {
 	d1, d2 := l.DF()
 	ss := sumOfSquares(l)
 	r.Method = recMethod{Statistic: t.Name, Kind: t.Kind.String(), Why: q.Why, Certified: l.Certified, Side: "upper tail: a larger statistic speaks against the restricted model",
-		Level: figure(s.level), Dispersion: "error variance estimated from the full model", Weights: "none", Offset: "none", Link: "identity",
+		Level: s.level, Dispersion: "error variance estimated from the full model", Weights: "none", Offset: "none", Link: "identity",
 		Coding: "one indicator a group; tests do not depend on the coding"}
 	if t.Law != nil {
 		r.Method.Reference = t.Law.String()
 	}
 	r.Numbers = recNumbers{
 		Restricted: recorded(s.smallFit), Full: recorded(s.fullFit),
-		NumeratorDF: figure(d1), DenominatorDF: figure(d2), NumeratorSS: figure(ss), NumeratorMS: figure(ss / d1),
-		DenominatorMS: figure(s.fullFit.RSS / float64(s.fullFit.DFError)),
-		F:             figure(q.Exact.Statistic), P: figure(q.Exact.P), LogP: figure(q.Exact.LogP),
-		Critical:      figure(dist.F{D1: d1, D2: d2}.UpperQuantile(1 - s.level)),
-		Noncentrality: figure(q.Exact.Statistic*d1*(d2-2)/d2 - d1),
-		LogLambda:     figure(q.LogLambda), Lambda: figure(q.Lambda), LambdaOf: q.Stratum(),
-		ChiSquared: figure(q.ChiSquared.Statistic), ChiSquaredDF: figure(q.Pair.DF), ChiSquaredP: figure(q.ChiSquared.P), ChiSquaredLogP: figure(q.ChiSquared.LogP),
-		ChiSquaredTrue: figure(q.TrueSize(1 - s.level)),
+		NumeratorDF: d1, DenominatorDF: d2, NumeratorSS: ss, NumeratorMS: ss / d1,
+		DenominatorMS: s.fullFit.RSS / float64(s.fullFit.DFError),
+		F:             q.Exact.Statistic, P: q.Exact.P, LogP: q.Exact.LogP,
+		Critical:      dist.F{D1: d1, D2: d2}.UpperQuantile(1 - s.level),
+		Noncentrality: q.Exact.Statistic*d1*(d2-2)/d2 - d1,
+		LogLambda:     q.LogLambda, Lambda: q.Lambda, LambdaOf: q.Stratum(),
+		ChiSquared: q.ChiSquared.Statistic, ChiSquaredDF: q.Pair.DF, ChiSquaredP: q.ChiSquared.P, ChiSquaredLogP: q.ChiSquared.LogP,
+		ChiSquaredTrue: q.TrueSize(1 - s.level),
 	}
-	for _, row := range s.table {
-		d1, _ := row.Pair.Linear.DF()
-		ss := sumOfSquares(row.Pair.Linear)
-		r.Table = append(r.Table, recRow{Name: row.Comparison.Name, SS: figure(ss), DF: figure(d1), MS: figure(ss / d1), F: figure(row.Exact.Statistic), P: figure(row.Exact.P), LogP: figure(row.Exact.LogP), Kind: row.Exact.Kind.String()})
+	for _, row := range s.table.Rows() {
+		d1, _ := row.DF()
+		t := row.Test()
+		r.Table = append(r.Table, recRow{Name: row.Name(), Hypothesis: row.Hypothesis(), SS: row.SS(), DF: d1, MS: row.MeanSquare(), F: t.Statistic, P: t.P, LogP: t.LogP, Kind: t.Kind.String()})
 	}
 }
 
 func recorded(f *glm.Fit) recFit {
-	return recFit{f.N, f.Rank, f.DFError, figure(f.RSS), figure(f.SD), figure(f.LogLikelihood)}
+	return recFit{f.N, f.Rank, f.DFError, f.RSS, f.SD, f.LogLikelihood}
 }
 
 func (s *study) recordEstimates(r *record) {
 	e := recEstimates{At: []recValue{}}
 	for i, c := range s.covariates {
-		e.At = append(e.At, recValue{c, figure(s.at[i])})
+		e.At = append(e.At, recValue{c, s.at[i]})
 	}
 	for i, g := range s.groups {
 		m := s.means[i]
-		e.Means = append(e.Means, recMean{g, figure(m.Value), figure(m.SE), figure(m.Lower), figure(m.Upper)})
+		e.Means = append(e.Means, recMean{g, m.Value, m.SE, m.Lower, m.Upper})
 	}
 	for _, q := range s.pairs {
 		d := q.difference
-		e.Pairs = append(e.Pairs, recPair{q.over, q.under, figure(d.Value), figure(d.SE), figure(d.T), figure(d.P), figure(q.joint), figure(q.lower), figure(q.upper)})
+		e.Pairs = append(e.Pairs, recPair{q.over, q.under, d.Value, d.SE, d.T, d.P, q.joint, q.lower, q.upper})
 	}
 	r.Estimates = e
 	r.Multiplicity = recMultiplicity{"all pairs of groups", len(s.pairs), "Bonferroni", "Bonferroni"}
@@ -154,20 +156,22 @@ func (s *study) recordEstimates(r *record) {
 
 func (s *study) recordChecks(r *record) {
 	add := func(c recCheck) { r.Checks = append(r.Checks, c) }
-	skip := func(name, why string) { add(recCheck{Name: name, Value: nan, P: nan, Note: "not made: " + why}) }
+	skip := func(name, why string) {
+		add(recCheck{Name: name, Value: math.NaN(), P: math.NaN(), Note: "not made: " + why})
+	}
 	if s.residuals != "" {
 		skip("outlying row", s.residuals)
 		skip("file order", s.residuals)
 	} else {
 		law := fmt.Sprintf("%d simulated sets of normal residuals of this design", s.outlying.draws)
-		add(recCheck{"outlying row", "largest absolute studentized residual", figure(s.outlying.value), figure(s.outlying.p), law, s.data.Line(s.worst), ""})
-		add(recCheck{"outlying row, bound", "largest absolute studentized residual", figure(s.outlying.value), figure(s.outlying.bound), "Bonferroni's inequality: p is not above this", s.data.Line(s.worst), ""})
+		add(recCheck{"outlying row", "largest absolute studentized residual", s.outlying.value, s.outlying.p, law, s.data.Line(s.worst), ""})
+		add(recCheck{"outlying row, bound", "largest absolute studentized residual", s.outlying.value, s.outlying.bound, "Bonferroni's inequality: p is not above this", s.data.Line(s.worst), ""})
 		if w := s.without; w != nil {
-			add(recCheck{"answer without the outlying row", w.result.Test().Name, figure(w.result.Test().Statistic), figure(w.result.P()), w.result.Recommended.String(), s.data.Line(s.worst), "the row was not left out of the answer"})
+			add(recCheck{"answer without the outlying row", w.result.Test().Name, w.result.Test().Statistic, w.result.P(), w.result.Recommended.String(), s.data.Line(s.worst), "the row was not left out of the answer"})
 		}
-		add(recCheck{"file order", "squared steps between neighbouring residuals over squared residuals", figure(s.serial.value), figure(s.serial.p), law + ", two-sided", 0, ""})
+		add(recCheck{"file order", "squared steps between neighbouring residuals over squared residuals", s.serial.value, s.serial.p, law + ", two-sided", 0, ""})
 	}
-	add(recCheck{"leverage", "largest leverage", figure(s.byRow[s.leverage].Leverage), nan, "no test", s.data.Line(s.leverage), ""})
+	add(recCheck{"leverage", "largest leverage", s.byRow[s.leverage].Leverage, math.NaN(), "no test", s.data.Line(s.leverage), ""})
 	s.recordLikelihood(r, "equal spread", s.spread, s.noSpread)
 	if len(s.covariates) > 0 {
 		s.recordLikelihood(r, "equal slopes", s.slopes, s.noSlopes)
@@ -181,10 +185,10 @@ func (s *study) recordChecks(r *record) {
 }
 
 func (s *study) recordLikelihood(r *record, name string, q lrt.Result, not string) {
-	c := recCheck{Name: name, Value: nan, P: nan, Note: "not made: " + not}
+	c := recCheck{Name: name, Value: math.NaN(), P: math.NaN(), Note: "not made: " + not}
 	if not == "" {
 		t := q.Test()
-		c = recCheck{Name: name, Statistic: t.Name, Value: figure(t.Statistic), P: figure(t.P), Reference: t.Kind.String()}
+		c = recCheck{Name: name, Statistic: t.Name, Value: t.Statistic, P: t.P, Reference: t.Kind.String()}
 		if t.Law != nil {
 			c.Reference += " " + t.Law.String()
 		}
@@ -194,7 +198,7 @@ func (s *study) recordLikelihood(r *record, name string, q lrt.Result, not strin
 
 func (s *study) recordPlan(r *record) {
 	if q := s.planned; q != nil {
-		r.Plan = &recPlan{figure(q.difference), figure(q.sd), figure(q.alpha), figure(q.noncentrality), figure(q.power), figure(q.wanted), figure(q.detectable), q.each}
+		r.Plan = &recPlan{q.difference, q.sd, q.alpha, q.noncentrality, q.power, q.wanted, q.detectable, q.each}
 	}
 }
 
