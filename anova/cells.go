@@ -29,44 +29,7 @@ func CountCells(ctx context.Context, src glm.Source, factors []string, w glm.Wei
 	if err != nil {
 		return nil, err
 	}
-	at := -1
-	for i, f := range src.Schema() {
-		if w.Field != "" && f.Name == w.Field {
-			at = i
-		}
-	}
-	var cell []int
-	var level []int32
-	for win, err := range src.Windows(ctx) {
-		if err != nil {
-			return nil, err
-		}
-		cell = append(cell[:0], make([]int, win.Rows)...)
-		level = append(level[:0], make([]int32, win.Rows)...)
-		for f := range c.columns {
-			if err := c.columns[f].Index(win, level); err != nil {
-				return nil, err
-			}
-			n := len(c.Levels[f])
-			for i, l := range level {
-				// The first level stands last among the columns of a factor.
-				cell[i] = cell[i]*n + (int(l)+1)%n
-			}
-		}
-		for i, at2 := range cell {
-			n := 1.0
-			if at >= 0 {
-				switch x := win.Hi[at][i]; {
-				case w.Kind == glm.Frequency:
-					n = x
-				case !(x > 0):
-					n = 0
-				}
-			}
-			c.Count[at2] += n
-		}
-	}
-	return c, nil
+	return c, c.pass(ctx, src, w, nil)
 }
 
 // bindCells finds the levels of the factors.

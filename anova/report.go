@@ -69,6 +69,22 @@ func (v Value) because(reason string) Value {
 // shown is a number with a text of its own for people.
 func shown(x float64, text string) Value { return Value{Number: x, Numeric: true, Text: text} }
 
+// toDigits is a number that people see to so many digits.
+func toDigits(x float64, digits int) Value {
+	if math.IsNaN(x) || math.IsInf(x, 0) {
+		return Number(x)
+	}
+	return shown(x, rounded(x, digits))
+}
+
+// percent is a level or a share that people read in percent.
+func percent(x float64) Value {
+	if math.IsNaN(x) {
+		return Number(x)
+	}
+	return shown(x, strconv.FormatFloat(100*x, 'g', 6, 64)+" %")
+}
+
 // probability is a p-value.
 func probability(p, logP float64) Value {
 	return shown(p, strings.TrimPrefix(lrt.FormatP(p, logP), "p = "))

@@ -141,3 +141,8 @@ func (t Table) Warnings() []lrt.Warning {
 	}
 	return ws
 }
+
+// Model returns the model whose residual is the error of the first row: the
+// largest model of a layout, and the one to ask for Means. It is nil where no row
+// compares linear models.
+func (t Table) Model() *glm.Model { return t.model() }

@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"math"
 	"strings"
 
 	"subsume.example/glm"
@@ -61,7 +60,7 @@ func (t Table) Report() Report {
 			{"n", "n =", Number(float64(t.N()))},
 			{"dropped", "", Number(float64(t.Dropped()))},
 			{"level", "", Number(t.level)},
-			{"r_squared", "R² =", shown(rsq, short(rsq)).because("no-total")},
+			{"r_squared", "R² =", toDigits(rsq, 4).because("no-total")},
 		}}
 	if t.Dropped() > 0 {
 		r.Facts[2].Title = "rows left out:"
@@ -102,14 +101,6 @@ func (t Table) title() string {
 	return "What explains " + m.Response()
 }
 
-// short writes a number to 4 digits, nothing for NaN.
-func short(x float64) string {
-	if math.IsNaN(x) {
-		return ""
-	}
-	return rounded(x, 4)
-}
-
 // values returns the line of a row.
 func (r Row) values(level float64) map[string]Value {
 	restricted, full := r.Spaces()
@@ -130,10 +121,7 @@ func (r Row) values(level float64) map[string]Value {
 	v["statistic_name"] = Text(test.Name)
 	v["p"], v["log_p"] = probability(test.P, test.LogP), Number(test.LogP)
 	v["reading"] = Text(test.Kind.String())
-	v["log_lambda"] = Number(res.LogLambda)
-	if x := res.LogLambda; !math.IsInf(x, 0) && !math.IsNaN(x) {
-		v["log_lambda"] = shown(x, rounded(x, 5))
-	}
+	v["log_lambda"] = toDigits(res.LogLambda, 5)
 	v["lambda_of"] = Text(res.Stratum())
 	v["chi_squared_p"] = Number(res.ChiSquared.P).because("no-chi-squared")
 	v["chi_squared_size"] = Number(res.TrueSize(1 - level)).because("no-exact-law")

@@ -41,3 +41,15 @@ func (m *Model) TermOf(coefficient string) string {
 	}
 	return m.cols[t].name
 }
+
+// Opaque returns the names of the terms of which it is not known which fields
+// they read: those that are not of this package.
+func (m *Model) Opaque() []string {
+	var names []string
+	for _, b := range m.cols {
+		if b.fields == nil && b.Key != "constant" {
+			names = append(names, b.name)
+		}
+	}
+	return names
+}
