@@ -13,7 +13,6 @@ type Small struct {
 	r    []dd.DD // packed by columns, the response last
 	inv  []dd.DD // reciprocal pivots; 0 for columns set aside
 	solv []dd.DD
-	pad  []float64
 
 	// Rank of all columns; Kept tells which.
 	Rank int
