@@ -20,7 +20,7 @@ func ExpQuickScaled(a DD) (m DD, k int) {
 	// e^r - 1 = r + r²/2 + ..., |r| <= 0.0055.
 	q := h * h
 	p := q * ((0.5 + h*(1.0/6)) + q*((1.0/24+h*(1.0/120))+q*(1.0/720+h*(1.0/5040))))
-	ph := t.Hi * h
+	ph := float64(t.Hi * h)
 	pl := math.FMA(t.Hi, h, -ph)
 	s := t.Hi + ph
 	e := ph - (s - t.Hi)
@@ -53,25 +53,26 @@ func LogQuick(a DD) DD {
 	if i >= 53 {
 		e++
 	}
-	h := m * t.c
+	h := float64(m * t.c)
 	l := math.FMA(m, t.c, -h) + ml*t.c
 	d := h - 1
 	z := d + l
 	l -= z - d
 	// log(1+z) = z - z²/2 + z³/3 - ..., |z| <= 2^-6.
-	q := z * z
+	q := float64(z * z)
 	ql := math.FMA(z, z, -q)
 	q4 := q * q
 	p := z * q * (((1.0/3 - z*(1.0/4)) + q*(1.0/5-z*(1.0/6))) + q4*((1.0/7-z*(1.0/8))+q*(1.0/9-z*(1.0/10))+q4*(1.0/11-z*(1.0/12))))
-	s := -0.5*q + z
-	low := -0.5*q - (s - z)
+	g := -0.5 * q // exact
+	s := g + z
+	low := g - (s - z)
 	low += p + (l - (0.5*ql + z*l))
 	if e == 0 && t.hi == 0 {
 		hi := s + low
 		return DD{hi, low - (hi - s)}
 	}
 	n := float64(e)
-	big := n * ln2p1
+	big := float64(n * ln2p1)
 	b, c := TwoSum(big, t.hi)
 	c += math.FMA(n, ln2p2, t.lo)
 	hi, f := TwoSum(b, s)

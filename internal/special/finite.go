@@ -32,7 +32,8 @@ func gammaFinite(k int, x dd.DD) Scaled {
 	}
 	m := 2 * invSqrt2Pi * millsPositive(math.Sqrt(2*x.Hi))
 	if k == 1 {
-		return Scaled{M: dd.DD{Hi: e.Hi * m, Lo: math.FMA(e.Hi, m, -e.Hi*m) + e.Lo*m}}
+		p := float64(e.Hi * m)
+		return Scaled{M: dd.DD{Hi: p, Lo: math.FMA(e.Hi, m, -p) + e.Lo*m}}
 	}
 	// (2n+1)!! times the sum, n = (k-3)/2: coefficients from the top are 1, 2n+1, (2n+1)(2n-1), ...
 	n := float64(k - 2)
@@ -50,7 +51,7 @@ func horner(x dd.DD, n, step float64) (s dd.DD, c float64) {
 	h, l, c := 1.0, 0.0, 1.0
 	for f := n; f >= step; f -= step {
 		c *= f
-		p := h * x.Hi
+		p := float64(h * x.Hi)
 		e := math.FMA(h, x.Hi, -p)
 		l = l*x.Hi + h*x.Lo + e
 		h, e = dd.TwoSum(p, c)
@@ -69,7 +70,7 @@ func betaFinite(a float64, n int, x, y dd.DD) dd.DD {
 	for j := float64(n - 1); j >= 1; j-- {
 		// (a+j-1)/j as a pair
 		d := a + (j - 1)
-		q := d * reciprocal[int(j)]
+		q := float64(d * reciprocal[int(j)])
 		r := dd.DD{Hi: q, Lo: math.FMA(-q, j, d) * reciprocal[int(j)]}
 		p := mulPair(mulPair(r, y), s)
 		h, l := dd.QuickTwoSum(1, p.Hi)

@@ -32,7 +32,7 @@ func (s *acc) add(h, l float64) {
 
 // addProd adds a (h + l).
 func (s *acc) addProd(a, h, l float64) {
-	p := a * h
+	p := float64(a * h)
 	e := math.FMA(a, h, -p)
 	t, f := dd.TwoSum(s.hi, p)
 	s.hi = t
@@ -42,7 +42,7 @@ func (s *acc) addProd(a, h, l float64) {
 // pair helpers: two or three ulps of the low part are lost, which is 2^-100.
 
 func mulPair(a, b dd.DD) dd.DD {
-	p := a.Hi * b.Hi
+	p := float64(a.Hi * b.Hi)
 	e := math.FMA(a.Hi, b.Hi, -p) + (a.Hi*b.Lo + a.Lo*b.Hi)
 	h := p + e
 	return dd.DD{Hi: h, Lo: e - (h - p)}
@@ -73,9 +73,9 @@ func lgamma1p(a, al float64) (hi, lo float64) {
 	q2 := q * q
 	c := &t.c
 	p := ((c[0] + h*c[1]) + q*(c[2]+h*c[3])) + q2*(((c[4]+h*c[5])+q*(c[6]+h*c[7]))+q2*((c[8]+h*c[9])+q*(c[10]+h*c[11])))
-	e := h * t.c1
+	e := float64(h * t.c1)
 	el := math.FMA(h, t.c1, -e) + (h*t.c1l + t.c0l) + al*(t.c1+2*h*c[0])
-	s := q * p
+	s := float64(q * p)
 	// |c0| may be below |e| near the zeros at 0 and 1.
 	hi, lo = dd.TwoSum(t.c0, e)
 	u, v := dd.TwoSum(hi, s)
