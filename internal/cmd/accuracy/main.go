@@ -14,8 +14,8 @@ import (
 	"errors"
 	"flag"
 	"fmt"
+	"io"
 	"io/fs"
-	"log"
 	"math"
 	"os"
 	"text/tabwriter"
@@ -24,49 +24,63 @@ import (
 )
 
 func main() {
-	log.SetFlags(0)
 	dir := flag.String("dir", "dist/testdata", "directory of the reference tables")
 	worst := flag.Bool("worst", false, "print the worst row of each line")
 	over := flag.Float64("over", 1e-12, "print every row of our laws with a larger error, and its conditioning")
 	speed := flag.Bool("speed", true, "time the laws")
 	flag.Parse()
-
-	inverse, err := accuracy.LoadInverse(*dir)
-	if err != nil {
-		log.Fatal(err)
+	if err := run(os.Stdout, *dir, *worst, *over, *speed); err != nil {
+		fmt.Fprintln(os.Stderr, "accuracy:", err)
+		os.Exit(1)
 	}
-	w := tabwriter.NewWriter(os.Stdout, 0, 0, 2, ' ', tabwriter.AlignRight)
+}
+
+func run(out io.Writer, dir string, worst bool, over float64, speed bool) error {
+	inverse, err := accuracy.LoadInverse(dir)
+	if err != nil {
+		return err
+	}
+	w := tabwriter.NewWriter(out, 0, 0, 2, ' ', tabwriter.AlignRight)
 	fmt.Fprint(w, "Errors of package dist\n\n", head)
-	failing := tables(w, *dir, accuracy.Tables, inverse, *worst, *over)
-	if rs, err := accuracy.MeasureFinders(*dir); err == nil {
-		line(w, "ncinv", "lambda", rs, *worst)
+	failing, err := tables(w, dir, accuracy.Tables, inverse, worst, over)
+	if err != nil {
+		return err
+	}
+	switch rs, err := accuracy.MeasureFinders(dir); {
+	case err == nil:
+		line(w, "ncinv", "lambda", rs, worst)
+	case !errors.Is(err, fs.ErrNotExist):
+		return err
 	}
 	w.Flush()
 	if len(failing) > 0 {
-		fmt.Printf("\nRows above %g, with |x density/tail|\n\n", *over)
+		fmt.Fprintf(out, "\nRows above %g, with |x density/tail|\n\n", over)
 		for _, r := range failing {
-			fmt.Printf("row %d %v x = %v: %s = %v, want %s: error %.2g, conditioning %.2g\n", r.Row.Line, r.Row.P, r.Row.X, r.What, r.Got, r.Want, r.Err, r.Conditioning)
+			fmt.Fprintf(out, "row %d %v x = %v: %s = %v, want %s: error %.2g, conditioning %.2g\n", r.Row.Line, r.Row.P, r.Row.X, r.What, r.Got, r.Want, r.Err, r.Conditioning)
 		}
 	}
 	fmt.Fprint(w, "\nErrors of gonum v0.17.0 on the same rows\n\n", head)
-	tables(w, *dir, accuracy.Peers, nil, false, math.Inf(1))
-	w.Flush()
-	if *speed {
-		times(w)
+	if _, err := tables(w, dir, accuracy.Peers, nil, false, math.Inf(1)); err != nil {
+		return err
 	}
+	w.Flush()
+	if speed {
+		times(out)
+	}
+	return nil
 }
 
 const head = "table\tvalue\trows\tmedian\tmax everyday\tmax\t> 1e-12\tnot finite\t\n"
 
 // tables prints one line for each kind of value and returns the rows above the limit.
-func tables(w *tabwriter.Writer, dir string, ts []accuracy.Table, inverse []accuracy.InverseRow, worst bool, over float64) (failing []accuracy.Result) {
+func tables(w *tabwriter.Writer, dir string, ts []accuracy.Table, inverse []accuracy.InverseRow, worst bool, over float64) (failing []accuracy.Result, err error) {
 	for _, t := range ts {
 		rows, err := accuracy.Load(dir, t)
 		if errors.Is(err, fs.ErrNotExist) {
 			continue // another directory may hold only some of the tables
 		}
 		if err != nil {
-			log.Fatal(err)
+			return nil, err
 		}
 		m := accuracy.Measure(t, rows)
 		m["quantile"] = accuracy.MeasureInverse(t, inverse)
@@ -82,7 +96,7 @@ func tables(w *tabwriter.Writer, dir string, ts []accuracy.Table, inverse []accu
 			}
 		}
 	}
-	return failing
+	return failing, nil
 }
 
 func line(w *tabwriter.Writer, table, kind string, rs []accuracy.Result, worst bool) {
@@ -100,11 +114,12 @@ func line(w *tabwriter.Writer, table, kind string, rs []accuracy.Result, worst b
 
 // times prints nanoseconds a call, the goal re-based by math.Exp on this machine, and gonum's time and
 // relative difference at the same point.
-func times(w *tabwriter.Writer) {
+func times(out io.Writer) {
 	const ms = 20
+	w := tabwriter.NewWriter(out, 0, 0, 2, ' ', tabwriter.AlignRight)
 	erfc := accuracy.Nanoseconds(math.Erfc, 0.1, ms)
 	exp := accuracy.Nanoseconds(math.Exp, -3.3, ms)
-	fmt.Printf("\nTimes on this machine, where math.Erfc(0.1) takes %.1f ns and math.Exp(-3.3) %.1f ns\n(goals are for 5.3 ns and re-based here)\n\n", erfc, exp)
+	fmt.Fprintf(out, "\nTimes on this machine, where math.Erfc(0.1) takes %.1f ns and math.Exp(-3.3) %.1f ns\n(goals are for 5.3 ns and re-based here)\n\n", erfc, exp)
 	fmt.Fprintln(w, "call\tpoint\tx\tns\tgoal\tgonum ns\tgonum's error\t")
 	for _, s := range accuracy.Speeds() {
 		for _, p := range s.Points {
