@@ -586,6 +586,7 @@ func (j *joint) accumulate(ctx context.Context) error {
 			return j.accumulateParallel(ctx, sliced)
 		}
 	}
+	j.gram.Workers = j.workers()
 	f := j.newFiller(size)
 	if ok && sliced.Len() == size { // one block
 		sliced.Slice(&f.part, 0, size)
@@ -609,6 +610,7 @@ func (j *joint) accumulate(ctx context.Context) error {
 				total.Merge(part)
 			}
 			part, chunk = total.Empty(), c
+			part.Workers = j.workers()
 		}
 		if err := f.finish(f.start == 0); err != nil {
 			return err

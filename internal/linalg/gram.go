@@ -50,6 +50,9 @@ type Gram struct {
 	cross []cross   // by pair of index groups
 	count [][]int64 // rows by index group and level
 
+	// Workers is the largest number of goroutines of one Add; 0 and 1: none.
+	Workers int
+
 	ones     int // dense column that is 1 throughout, −1
 	weighted bool
 	rowsIn   int
@@ -126,28 +129,47 @@ func packed(i, j int) int { return j*(j+1)/2 + i } // i <= j
 
 // Add accumulates one block. Index entries must be below the number of levels; −1 is no level.
 func (g *Gram) Add(b *Block) {
-	n := b.Rows
-	g.rowsIn += n
+	g.rowsIn += b.Rows
 	m := g.nd + g.rhs
-	for j := range m {
-		x := b.column(j)
-		if b.Weight != nil {
-			x = g.weigh(x, b.Weight, n)
-		}
-		at := packed(0, j)
-		i := 0
-		for ; i+1 <= j; i += 4 { // up to four at a time; a remainder of one goes alone
-			r := dot4(x, b.column(i), b.column(i+1), b.column(min(i+2, j)), b.column(min(i+3, j)), n)
-			for k := range min(4, j-i+1) {
-				g.dd[at+i+k] = g.dd[at+i+k].Add(r[k])
-			}
-		}
-		if i == j {
-			g.dd[at+j] = g.dd[at+j].Add(dot(x, b.column(j), n))
+	if work := m * m / 2 * b.Rows; g.Workers > 1 && work > 1<<20 {
+		g.share(b, m, work)
+	} else {
+		for j := range m {
+			g.addDense(b, j, &g.wx)
 		}
 	}
 	for a := range g.ig {
 		g.addIndex(b, a, m)
+	}
+}
+
+// share is the dense part of Add on several goroutines, each with columns of its own.
+func (g *Gram) share(b *Block, m, work int) {
+	parallel(g.Workers, work, func(w, of int) {
+		var scratch vec
+		for j := w; j < m; j += of {
+			g.addDense(b, j, &scratch)
+		}
+	})
+}
+
+// addDense adds the products of dense column j with those before it and itself.
+func (g *Gram) addDense(b *Block, j int, scratch *vec) {
+	n := b.Rows
+	x := b.column(j)
+	if b.Weight != nil {
+		x = weigh(x, b.Weight, n, scratch)
+	}
+	at := packed(0, j)
+	i := 0
+	for ; i+1 <= j; i += 4 { // up to four at a time; a remainder of one goes alone
+		r := dot4(x, b.column(i), b.column(i+1), b.column(min(i+2, j)), b.column(min(i+3, j)), n)
+		for k := range min(4, j-i+1) {
+			g.dd[at+i+k] = g.dd[at+i+k].Add(r[k])
+		}
+	}
+	if i == j {
+		g.dd[at+j] = g.dd[at+j].Add(dot(x, b.column(j), n))
 	}
 }
 
@@ -160,14 +182,15 @@ func (b *Block) column(j int) vec {
 	return v
 }
 
-func (g *Gram) weigh(x vec, w []float64, n int) vec {
-	if g.wx.hi == nil {
-		g.wx = newVec(BlockRows)
+// weigh returns the column times the weights, in the scratch vector.
+func weigh(x vec, w []float64, n int, scratch *vec) vec {
+	if scratch.hi == nil {
+		*scratch = newVec(BlockRows)
 	}
 	for i := range n {
-		g.wx.set(i, x.at(i).MulF(w[i]))
+		scratch.set(i, x.at(i).MulF(w[i]))
 	}
-	return g.wx
+	return *scratch
 }
 
 func (g *Gram) addIndex(b *Block, a, m int) {
