@@ -91,7 +91,9 @@ func (p *product) node(w, z float64, derivative bool) (in, out, slope float64) {
 		missed += g.count * q
 		if missed < 1e-290 {
 			m := math.Log(g.count) + math.Max(special.NormalLogUpper(a), special.NormalLogLower(b))
-			if m > deep {
+			if math.IsInf(m, -1) {
+				// no limit within reach
+			} else if m > deep {
 				deep = m + math.Log1p(math.Exp(deep-m))
 			} else {
 				deep += math.Log1p(math.Exp(m - deep))

@@ -243,13 +243,15 @@ func normalCentralQuantile(y float64) float64 {
 
 // normalTailQuantile solves log Q(x) = l for l < -1.3 by Halley's iteration:
 // with the hazard h = 1/M(x), f' = -h and f”/f' = h - x. The function is
-// concave, nearly a parabola, and the start is within a few per cent.
+// concave, nearly a parabola. It starts from Hastings' fraction (Abramowitz and
+// Stegun 26.2.23, error below 4.5e-4), far out from Q(x) ~ φ(x)/x.
 func normalTailQuantile(l float64) float64 {
 	x := math.Sqrt(-2 * l)
-	if x < 1e8 {
-		// Q(x) ~ φ(x)/(x + 1/x): two substitutions.
-		y := math.Sqrt(math.Max(0.1, -2*(l+logSqrt2Pi+math.Log(x+0.3))))
-		x = math.Sqrt(math.Max(0.1, -2*(l+logSqrt2Pi+math.Log(y+1/(y+0.8)))))
+	switch {
+	case l > -2000:
+		x -= (2.515517 + x*(0.802853+x*0.010328)) / (1 + x*(1.432788+x*(0.189269+x*0.001308)))
+	case x < 1e8:
+		x = math.Sqrt(-2 * (l + logSqrt2Pi + math.Log(x)))
 	}
 	for range 8 {
 		m := millsPositive(x)
@@ -257,7 +259,7 @@ func normalTailQuantile(l float64) float64 {
 		d := -f * m
 		d /= 1 - 0.5*d*(1/m-x)
 		x -= d
-		if math.Abs(d) <= 1e-6*x {
+		if math.Abs(d) <= 1e-5*x {
 			break
 		}
 	}
