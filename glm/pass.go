@@ -371,8 +371,8 @@ func (f *filler) weigh() error {
 	return nil
 }
 
-// chooseBasis sets shift and scale from the first block: a provisional mean where
-// the values are far from zero, and a power of two where they are far from one.
+// chooseBasis sets shift and scale from the first block: a value that occurs where
+// all are far from zero, and a power of two where they are far from one.
 func (f *filler) chooseBasis() {
 	j, n := f.j, f.block.Rows
 	j.shift, j.exp = append(j.shift[:0], make([]float64, f.yc+1)...), append(j.exp[:0], make([]int, f.yc+1)...)
@@ -392,17 +392,38 @@ func (f *filler) chooseBasis() {
 
 // centre returns a shift and a scale for a column of plain values.
 func (j *joint) centre(x []float64) (shift float64, exp int) {
-	if j.shifted {
+	lower, upper := extremes(x)
+	if j.shifted && math.Abs(x[0]) > 32*(upper/2-lower/2) {
 		// Far from zero x − shift is exact (Sterbenz 1974) and saves digits. Near
 		// zero there are none to save, and x itself has no low part.
-		if m := provisional(x); math.Abs(m) > 16*math.Ldexp(1, spread(x, m)) {
-			shift = m
-		}
+		shift = x[0]
 	}
-	if exp = spread(x, shift); exp > -64 && exp < 64 {
+	if exp = reach(lower, upper, shift); exp > -64 && exp < 64 {
 		exp = 0
 	}
 	return shift, exp
+}
+
+// extremes returns the smallest and the largest value.
+func extremes(x []float64) (lower, upper float64) {
+	lower, upper = x[0], x[0]
+	for _, v := range x {
+		if v < lower {
+			lower = v
+		} else if v > upper {
+			upper = v
+		}
+	}
+	return lower, upper
+}
+
+// reach returns the exponent of the largest distance from the centre.
+func reach(lower, upper, centre float64) int {
+	d := math.Max(math.Abs(lower/2-centre/2), math.Abs(upper/2-centre/2))
+	if d == 0 {
+		return 0
+	}
+	return math.Ilogb(d) + 2
 }
 
 // choosePowers centres a polynomial and forms its powers in the first block.
@@ -410,10 +431,11 @@ func (f *filler) choosePowers(g int) {
 	j, n, c := f.j, f.block.Rows, f.first[g]
 	q := &powers{field: j.cols[g].powers.field, degree: j.cols[g].powers.degree}
 	x := f.block.Hi[c][:n]
+	lower, upper := extremes(x)
 	if j.shifted {
-		q.centre = provisional(x)
+		q.centre = lower/2 + upper/2
 	}
-	q.exp = spread(x, q.centre)
+	q.exp = reach(lower, upper, q.centre) - 1
 	if j.basis.powers == nil {
 		j.basis.powers = make(map[int]*powers)
 	}
@@ -436,36 +458,6 @@ func (f *filler) choosePowers(g int) {
 			f.block.Hi[c+k][i], f.block.Lo[c+k][i] = x.Hi, x.Lo
 		}
 	}
-}
-
-// provisional returns a value near the middle of x: one that occurs.
-func provisional(x []float64) float64 {
-	inv := 1 / float64(len(x))
-	var s float64
-	for _, v := range x {
-		s += v * inv
-	}
-	best, near := x[0], math.Inf(1)
-	for _, v := range x {
-		if d := math.Abs(v - s); d < near {
-			best, near = v, d
-		}
-	}
-	return best
-}
-
-// spread returns the exponent of the largest distance from the centre.
-func spread(x []float64, centre float64) int {
-	m := 0.0
-	for _, v := range x {
-		if d := math.Abs(v/2 - centre/2); d > m {
-			m = d
-		}
-	}
-	if m == 0 {
-		return 0
-	}
-	return math.Ilogb(m) + 1
 }
 
 // blocks passes over the rows in blocks of fixed bounds. The visitor owns the
