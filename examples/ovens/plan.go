@@ -2,58 +2,73 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
+	"slices"
 
-	"subsume.example/dist"
+	"subsume.example/lrt"
 )
 
 // plan holds what the design could be expected to find, from figures that were
 // there before the response: the difference of interest and the spread of earlier work.
 type plan struct {
-	difference, sd   float64
-	a, b             string // the pair of groups that is hardest to tell apart
-	noncentrality    float64
-	power            float64
-	each             int     // rows a group, equal groups, for the wanted power
-	powerEach        float64 // reached with them
-	detectable       float64 // difference found with the wanted power by this design
-	alpha, d1, d2    float64
-	critical, wanted float64
+	difference, sd float64
+	alpha, wanted  float64
+	a, b           string // the pair of groups that is hardest to tell apart
+	here           lrt.Plan
+	detectable     float64 // difference found with the wanted power by this design
+	each           int     // rows a group, equal groups, for the wanted power; 0: out of reach
+	powerEach      float64 // reached with them
 }
 
 // plan works the planning figures, for the least favourable pattern: two
 // groups differ by the difference of interest and all others lie halfway.
-func (s *study) plan(context.Context) error {
+func (s *study) plan(ctx context.Context) error {
 	if s.difference == 0 {
 		return nil
 	}
-	k := float64(len(s.groups))
-	q := &plan{difference: s.difference, sd: s.sd, alpha: 1 - s.level, wanted: s.power, noncentrality: math.Inf(1)}
-	q.d1, q.d2 = k-1, float64(s.data.Len())-k-float64(len(s.covariates))
-	if q.d2 < 1 {
-		return fmt.Errorf("%s: %s in %d groups leave no degrees of freedom for error", s.name(), rows(s.data.Len()), len(s.groups))
-	}
+	q := &plan{difference: s.difference, sd: s.sd, alpha: 1 - s.level, wanted: s.power}
+	unit := math.Inf(1)
 	for a := range s.groups {
 		for b := range a {
-			if l := spreadOf(s.counts, a, b); l < q.noncentrality {
-				q.noncentrality, q.a, q.b = l, s.groups[b], s.groups[a]
+			if l := spreadOf(s.counts, a, b); l < unit {
+				unit, q.a, q.b = l, s.groups[b], s.groups[a]
 			}
 		}
 	}
-	ratio := q.difference / q.sd
-	unit := q.noncentrality
-	q.noncentrality *= ratio * ratio
-	q.critical = dist.F{D1: q.d1, D2: q.d2}.UpperQuantile(q.alpha)
-	q.power = dist.NoncentralF{D1: q.d1, D2: q.d2, Lambda: q.noncentrality}.Survival(q.critical)
-	lambda, err := dist.NoncentralityF(q.d1, q.d2, q.critical, q.wanted)
+	var err error
+	if q.here, err = s.planFor(s.counts, unit); err != nil {
+		return s.explain(err)
+	}
+	lambda, err := q.here.Detectable(q.alpha, q.wanted)
 	if err != nil {
 		return err
 	}
 	q.detectable = q.sd * math.Sqrt(lambda/unit)
-	q.each, q.powerEach = smallestGroups(k, float64(len(s.covariates)), ratio, q.alpha, q.wanted)
+	size, err := lrt.SizeSearch{
+		Alpha: q.alpha, Power: q.wanted, Step: slices.Repeat([]int{1}, len(s.groups)),
+		Plan: func(n []int) (lrt.Plan, error) { return s.planFor(n, spreadOf(n, 0, 1)) },
+	}.Solve(ctx)
+	switch {
+	case err == nil:
+		q.each, q.powerEach = size.N[0], size.Power
+	case !errors.Is(err, lrt.ErrTooSmall):
+		return err
+	}
 	s.planned = q
 	return nil
+}
+
+// planFor is the plan of the F test with n rows in the groups, for a pattern
+// of the given spread in units of the difference of interest.
+func (s *study) planFor(n []int, spread float64) (lrt.Plan, error) {
+	total := 0
+	for _, v := range n {
+		total += v
+	}
+	ratio := s.difference / s.sd
+	return lrt.PlanF(float64(len(n)-1), float64(total-len(n)-len(s.covariates)), spread*ratio*ratio)
 }
 
 // spreadOf returns Σ n (μ − μ̄)² for means ½ in group a, −½ in group b and 0 elsewhere.
@@ -65,34 +80,6 @@ func spreadOf(counts []int, a, b int) float64 {
 	na, nb := float64(counts[a]), float64(counts[b])
 	mean := (na - nb) / 2 / float64(n)
 	return (na+nb)/4 - float64(n)*mean*mean
-}
-
-// smallestGroups returns the fewest rows a group, equal groups, with which the
-// exact F test finds two groups ratio standard deviations apart with the wanted
-// power, and the power then; 0 when no size up to a million does.
-func smallestGroups(k, covariates, ratio, alpha, wanted float64) (int, float64) {
-	power := func(n int) float64 {
-		d1, d2 := k-1, k*float64(n)-k-covariates
-		if d2 < 1 {
-			return 0
-		}
-		c := dist.F{D1: d1, D2: d2}.UpperQuantile(alpha)
-		return dist.NoncentralF{D1: d1, D2: d2, Lambda: float64(n) * ratio * ratio / 2}.Survival(c)
-	}
-	low, high := 1, 2 // power(low) < wanted <= power(high); power grows with n
-	for power(high) < wanted {
-		if low, high = high, 2*high; high > 1<<20 {
-			return 0, math.NaN()
-		}
-	}
-	for high-low > 1 {
-		if m := (low + high) / 2; power(m) < wanted {
-			low = m
-		} else {
-			high = m
-		}
-	}
-	return high, power(high)
 }
 
 // writePlan says what could be expected before the response was looked at.
@@ -107,8 +94,8 @@ func (s *study) writePlan(p *page) {
 	p.line("")
 	t := p.table("lr")
 	t.row("level of the test", percent(q.alpha))
-	t.row("noncentrality λ of that pattern in this design", fig(q.noncentrality, 4))
-	t.row("power of the exact F test in this design", percent(q.power))
+	t.row("noncentrality λ of that pattern in this design", fig(q.here.Noncentrality, 4))
+	t.row("power of the exact F test in this design", percent(q.here.Power(q.alpha)))
 	t.row(fmt.Sprintf("difference found with power %s in this design", percent(q.wanted)), fig(q.detectable, 4))
 	if q.each > 0 {
 		t.row(fmt.Sprintf("rows a group for power %s, equal groups (power %s)", percent(q.wanted), percent(q.powerEach)), fmt.Sprint(q.each))

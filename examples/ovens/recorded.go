@@ -198,7 +198,7 @@ func (s *study) recordLikelihood(r *record, name string, q lrt.Result, not strin
 
 func (s *study) recordPlan(r *record) {
 	if q := s.planned; q != nil {
-		r.Plan = &recPlan{q.difference, q.sd, q.alpha, q.noncentrality, q.power, q.wanted, q.detectable, q.each}
+		r.Plan = &recPlan{q.difference, q.sd, q.alpha, q.here.Noncentrality, q.here.Power(q.alpha), q.wanted, q.detectable, q.each}
 	}
 }
 
