@@ -163,6 +163,8 @@ func TestKnownTrouble(t *testing.T) {
 		{"F(3,20).Survival(1e8)", dist.F{D1: 3, D2: 20}.Survival(1e8), 6.4166010694061963e-72},
 		{"F(2,1e8).Survival(3)", dist.F{D1: 2, D2: 1e8}.Survival(3), math.Exp(-5e7 * math.Log1p(6e-8))},
 		{"F(3,+Inf).Survival(2)", dist.F{D1: 3, D2: inf}.Survival(2), 0.11161022509471256},
+		{"F(3,1e300).Survival(2)", dist.F{D1: 3, D2: 1e300}.Survival(2), 0.11161022509471256},
+		{"F(1e300,4).CDF(2)", dist.F{D1: 1e300, D2: 4}.CDF(2), 2 / math.E},
 		{"F(2,2).Survival(1)", dist.F{D1: 2, D2: 2}.Survival(1), 0.5},
 		{"F(2e8,2e8).CDF(1)", dist.F{D1: 2e8, D2: 2e8}.CDF(1), 0.5},
 		{"F(1e12,1e12).CDF(1)", dist.F{D1: 1e12, D2: 1e12}.CDF(1), 0.5},

@@ -58,7 +58,11 @@ func (f F) beta(x float64) (X, Y dd.DD) {
 	return p.DivQuick(s), dd.From(d2).DivQuick(s)
 }
 
-// tiny is where X or Y is taken by its logarithm only.
+// cut limits finite degrees of freedom to 1e150, where the law is its limit to all digits but no
+// product leaves the floats.
+func (f F) cut() F { return F{min(f.D1, 1e150), min(f.D2, 1e150)} }
+
+// tinyOdds is where X or Y is taken by its logarithm only.
 const tinyOdds = 0x1p-800
 
 // tail returns one tail at 0 < x < +Inf.
@@ -66,6 +70,7 @@ func (f F) tail(x float64) centralTail {
 	if math.IsInf(f.D2, 1) {
 		return chiTail(f.D1, f.scaleChi(x), x)
 	}
+	f = f.cut()
 	a, b := half(f.D1), half(f.D2)
 	switch odds := f.D1 / f.D2 * x; {
 	case odds < tinyOdds:
@@ -85,6 +90,7 @@ func (f F) density(x float64, quick bool) special.Scaled {
 	if math.IsInf(f.D2, 1) {
 		return perX(chiKernel(f.D1, f.scaleChi(x), x, quick), x)
 	}
+	f = f.cut()
 	a, b := half(f.D1), half(f.D2)
 	switch odds := f.D1 / f.D2 * x; {
 	case odds < tinyOdds:
