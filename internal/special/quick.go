@@ -149,6 +149,7 @@ func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
 // quickGammaTail is GammaTail on the quick path:
 //
 //	2a <= 28 whole, x > 0.6a  upper: finite sum
+//	a > 1000, |η| <= 1.16      the tail on the side of x: uniform expansion (temme.go)
 //	x <= (a+1)/4      lower: series, its first terms in double-double
 //	x <= a            lower: continued fraction, the limit of the beta law's (DLMF 8.9.1, even part)
 //	a < x < 2.5       upper: complement of the series, more terms in double-double
@@ -161,16 +162,15 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	if k := 2 * a; k <= finiteGammaMax && k == math.Floor(k) && x0 > 0.6*a && x0 < 650 {
 		return gammaFinite(int(k), x), true, true
 	}
+	if a > quickMax && x0 > 0.2*a {
+		if t, upper, ok = temmeTail(a, x); ok {
+			return t, upper, true
+		}
+	}
 	l, m := gammaQuickKernel(a, x)
 	f, ok := quickScaled(l, m)
 	if !ok {
 		return Scaled{}, false, false
-	}
-	if a > quickMax && x0 > 0.5*a && x0 < 2*a {
-		d, e := dd.TwoSum(x0, -a)
-		d += e + x.Lo
-		f.M = f.M.MulF(gammaMills(math.Abs(d), x0, d > 0))
-		return f, d > 0, true
 	}
 	if x0 <= a {
 		if x0 > 0.25*(a+1) {
