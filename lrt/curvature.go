@@ -225,7 +225,10 @@ func (p *problem) valueDifferences(u []float64, f float64, info []float64, t flo
 		base, n = p.base, len(p.base)
 	}
 	G := len(p.groups)
-	up, down := make([]float64, G*n), make([]float64, G*n)
+	if need := (2*G + 2) * n; len(p.space) < need {
+		p.space = make([]float64, need)
+	}
+	up, down := p.space[:G*n], p.space[G*n:2*G*n]
 	h := make([]float64, m)
 	for j := range m {
 		h[j] = p.step(u, j, t)
@@ -249,7 +252,7 @@ func (p *problem) valueDifferences(u []float64, f float64, info []float64, t flo
 		}
 	}
 	own := func(g, i int) int {
-		if p.each {
+		if p.grouped {
 			return int(p.owner[g][i])
 		}
 		return p.groups[g][0]
@@ -271,7 +274,7 @@ func (p *problem) valueDifferences(u []float64, f float64, info []float64, t flo
 			}
 		}
 	}
-	pp, mm := make([]float64, n), make([]float64, n)
+	pp, mm := p.space[2*G*n:(2*G+1)*n], p.space[(2*G+1)*n:(2*G+2)*n]
 	for g := range p.groups {
 		for k := range g {
 			shift(g, 1)

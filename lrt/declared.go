@@ -158,7 +158,7 @@ func (d *Declared) fit(ctx context.Context, starts func(*evaluator) ([][]float64
 	if err != nil {
 		return Fit{}, err
 	}
-	return d.dress(ev, q)
+	return d.dress(ev, q, false)
 }
 
 func (d *Declared) best(ev *evaluator, starts func(*evaluator) ([][]float64, error)) (*peak, error) {
@@ -380,8 +380,8 @@ func faces(bs []Bound, index map[string]int, q *peak) [][]held {
 	return list
 }
 
-// dress makes the Fit.
-func (d *Declared) dress(ev *evaluator, q *peak) (Fit, error) {
+// dress makes the Fit; keep holds on to the workspace for one more use.
+func (d *Declared) dress(ev *evaluator, q *peak, keep bool) (Fit, error) {
 	if q.x == nil {
 		if q.p.root(q.u) == nil {
 			return Fit{}, &ModelError{Model: d.core.name, Err: ErrNotConverged}
@@ -405,6 +405,9 @@ func (d *Declared) dress(ev *evaluator, q *peak) (Fit, error) {
 	}
 	fit := Fit{N: d.core.n, Dim: free.m, LogLikelihood: q.f, Deviance: nan,
 		Estimate: append([]float64(nil), theta...), detail: &detail{d.frame, &peak{summit: summit{f: q.f}, x: q.x, held: q.held, flat: q.flat, loss: q.loss, eq: q.eq}}}
+	if keep {
+		fit.detail.peak.p = q.p
+	}
 	fit.Warnings = append(fit.Warnings, ev.warnings...)
 	fit.Warnings = append(fit.Warnings, q.warn...)
 	for _, h := range q.held {
@@ -583,7 +586,9 @@ func (d *Declared) FitPair(ctx context.Context, c Comparison) (Pair, error) {
 	}
 	p.Warnings = append(p.Warnings, tagged("restricted", p.Restricted.Warnings)...)
 	p.Warnings = append(p.Warnings, tagged("full", p.Full.Warnings)...)
-	return p, d.freedom(ctx, small, &p)
+	err = d.freedom(ctx, small, &p)
+	p.Full.detail.peak.p = nil
+	return p, err
 }
 
 func tagged(place string, ws []Warning) []Warning {
@@ -639,7 +644,7 @@ func (d *Declared) fitAbove(ctx context.Context, below Fit) (Fit, error) {
 	if q.f < below.LogLikelihood && below.LogLikelihood-q.f <= likelihoodSlack(q.f, below.LogLikelihood) {
 		q.f = below.LogLikelihood // rounding
 	}
-	return d.dress(ev, q)
+	return d.dress(ev, q, true)
 }
 
 // oneHill reports whether the log likelihood falls steadily on the straight

@@ -9,23 +9,39 @@ const (
 	epsilon   = 0x1p-52
 )
 
-// sum adds with compensation (Neumaier 1974), so that a
-// log likelihood of a million rows keeps the digits its derivatives are taken from.
+// sum adds in four lanes that carry their rounding errors (Knuth 1969, the
+// two-sum), so that a log likelihood of a million rows keeps the digits its
+// derivatives are taken from.
 func sum(x []float64) float64 {
-	var s, c float64
-	for _, v := range x {
-		t := s + v
-		if math.Abs(s) >= math.Abs(v) {
-			c += (s - t) + v
-		} else {
-			c += (v - t) + s
+	var s, c [4]float64
+	i := 0
+	for ; i+4 <= len(x); i += 4 {
+		for k := range 4 {
+			v := x[i+k]
+			t := s[k] + v
+			b := t - s[k]
+			c[k] += (s[k] - (t - b)) + (v - b)
+			s[k] = t
 		}
-		s = t
 	}
-	if r := s + c; !math.IsNaN(r) {
+	total, rest := 0.0, 0.0
+	add := func(v float64) {
+		t := total + v
+		b := t - total
+		rest += (total - (t - b)) + (v - b)
+		total = t
+	}
+	for ; i < len(x); i++ {
+		add(x[i])
+	}
+	for k := range 4 {
+		add(s[k])
+		rest += c[k]
+	}
+	if r := total + rest; !math.IsNaN(r) {
 		return r
 	}
-	return s // an infinity among the terms leaves NaN in c
+	return total // an infinity among the terms leaves NaN in rest
 }
 
 func finite(x []float64) bool {

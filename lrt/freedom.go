@@ -25,7 +25,7 @@ func (d *Declared) freedom(ctx context.Context, small *Declared, p *Pair) error 
 	}
 	// At the restricted estimate, in the full space's coordinates.
 	if p.Full.Dim > p.Restricted.Dim && !d.core.drawn {
-		names, loss, ok := d.lostAt(ctx, p.Restricted)
+		names, loss, ok := d.lostAt(ctx, q.p, p.Restricted)
 		if ok && loss > lossFull {
 			p.Irregular = fmt.Sprintf("under the restriction the data say nothing about %s of the full space, so −2 log λ has no χ² law (simulate it)", strings.Join(names, ", "))
 			p.Warnings = append(p.Warnings, Warning{"irregular", p.Irregular})
@@ -38,8 +38,8 @@ func (d *Declared) freedom(ctx context.Context, small *Declared, p *Pair) error 
 }
 
 // lostAt counts the directions of d that change nothing at the estimate of a
-// smaller space.
-func (d *Declared) lostAt(ctx context.Context, at Fit) (names []string, loss int, ok bool) {
+// smaller space; used is the workspace of d's own fit, if any.
+func (d *Declared) lostAt(ctx context.Context, used *problem, at Fit) (names []string, loss int, ok bool) {
 	if d.frame.layer != nil {
 		return nil, 0, false
 	}
@@ -48,7 +48,14 @@ func (d *Declared) lostAt(ctx context.Context, at Fit) (names []string, loss int
 		return nil, 0, false
 	}
 	ev := &evaluator{ctx: ctx, core: d.core}
-	p := newProblem(ev, co)
+	var p *problem
+	if used != nil && used.co.m == co.m && used.ev.core == d.core && len(used.chain) == 1 {
+		p, co = used, used.co
+		p.ev.ctx, p.coarse = ctx, false
+		ev = p.ev
+	} else {
+		p = newProblem(ev, co)
+	}
 	u := co.nearest(at.Estimate)
 	if !co.point(u, p.at[0]) {
 		return nil, 0, false
@@ -79,6 +86,9 @@ func (d *Declared) lostAt(ctx context.Context, at Fit) (names []string, loss int
 		g := make([]float64, co.m)
 		if !p.slope(u, f, nil, g) {
 			return nil, 0, false
+		}
+		if !p.confirm(u) {
+			p.slope(u, f, nil, g)
 		}
 		if p.outer(curv) {
 			p.regroup()

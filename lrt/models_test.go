@@ -205,3 +205,29 @@ func mustRestrict(t testing.TB, s Space, rs ...Restriction) *Declared {
 	}
 	return r.(*Declared)
 }
+
+// simulateGamma draws by the method of Marsaglia and Tsang (2000).
+func simulateGamma(k int) func(grouped, []float64, rand.Source) (grouped, error) {
+	return func(d grouped, th []float64, src rand.Source) (grouped, error) {
+		r := rand.New(src)
+		y := make([]float64, len(d.y))
+		for i := range y {
+			shape, rate := th[d.g[i]], th[k+d.g[i]]
+			boost := 1.0
+			if shape < 1 {
+				boost = math.Pow(r.Float64(), 1/shape)
+				shape++
+			}
+			a := shape - 1.0/3
+			for {
+				x := r.NormFloat64()
+				v := math.Pow(1+x/math.Sqrt(9*a), 3)
+				if v > 0 && math.Log(1-r.Float64()) < 0.5*x*x+a-a*v+a*math.Log(v) {
+					y[i] = a * v * boost / rate
+					break
+				}
+			}
+		}
+		return grouped{y, d.g, d.k}, nil
+	}
+}

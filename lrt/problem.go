@@ -21,12 +21,13 @@ type problem struct {
 	base    []float64 // log likelihoods of the observations at the current point
 	work    []float64 // the same at a displaced one
 	groups  [][]int   // coordinates that may be displaced together
-	owner   [][]int32 // by group: which of them an observation depends on, −1: none
+	owner   [][]int32 // by group, once found: which of them an observation depends on, −1: none
 	score   [][]float64
 	grouped bool // groups were found from zeros of the scores
 	coarse  bool // wide central steps: the log likelihood is noisy
 
-	v      []float64 // displaced point
+	v, per []float64 // displaced point, and one over its displacements
+	space  []float64 // scratch of second differences
 	gRoot  []float64
 	jac    []float64 // root by u, for analytic derivatives
 	g2, g3 []float64
@@ -47,6 +48,7 @@ func newProblem(ev *evaluator, co *coordinates) *problem {
 	}
 	m := co.m
 	p.scale, p.v, p.doubt = make([]float64, m), make([]float64, m), make([]float64, m)
+	p.per = make([]float64, m)
 	if p.each {
 		p.base, p.work = make([]float64, c.n), make([]float64, c.n)
 	}
@@ -69,13 +71,10 @@ func (p *problem) singletons() {
 	if !p.each {
 		return
 	}
+	n := p.ev.core.n
+	all := make([]float64, m*n)
 	for j := range m {
-		own := make([]int32, p.ev.core.n)
-		for i := range own {
-			own[i] = int32(j)
-		}
-		p.owner = append(p.owner, own)
-		p.score = append(p.score, make([]float64, p.ev.core.n))
+		p.score = append(p.score, all[j*n:j*n+n])
 	}
 }
 
@@ -189,19 +188,23 @@ func (p *problem) slope(u []float64, f float64, curv, g []float64) bool {
 			g[j] = 0
 		}
 		if p.each {
-			s, own := p.score[c], p.owner[c]
-			if len(group) == 1 {
+			s := p.score[c]
+			if !p.grouped {
 				j := group[0]
-				h := p.v[j] - u[j]
+				per := 1 / (p.v[j] - u[j])
 				for i, b := range p.base {
-					s[i] = (p.work[i] - b) / h
+					s[i] = (p.work[i] - b) * per
 				}
 				g[j] = sum(s)
 			} else {
+				for _, j := range group {
+					p.per[j] = 1 / (p.v[j] - u[j])
+				}
+				own := p.owner[c]
 				for i, b := range p.base {
 					s[i] = 0
 					if j := own[i]; j >= 0 {
-						s[i] = (p.work[i] - b) / (p.v[j] - u[j])
+						s[i] = (p.work[i] - b) * p.per[j]
 						g[j] += s[i]
 					}
 				}
