@@ -6,7 +6,7 @@ import "math"
 type summit struct {
 	u          []float64
 	f          float64
-	first      float64 // at the start
+	slopeAt    []float64 // a while ago, of coordinates running to the end of their range
 	g          []float64
 	info       []float64 // −∂²/∂u∂u' near the summit; nil: never taken
 	taken      float64   // how near, in standard errors
@@ -164,7 +164,6 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		return s
 	}
 	p.settle(s.f)
-	s.first = s.f
 	if m == 0 {
 		s.decrement, s.converged = 0, true
 		return s
@@ -407,11 +406,20 @@ func (p *problem) running(u0 []float64, s *summit, edges bool) bool {
 		switch l.kind {
 		case linkAbove, linkBelow:
 			toEdge = s.g[j] < 0 && d < math.Log(edgeRatio)
-			toInfinity = d > 60 && s.g[j] > 0 || !edges && d < -80
-			// Rising steadily towards the end of its range, eleven decades from the start:
-			// without end, whatever rounding makes of it further on.
-			if !edges && d < -16 && s.f-s.first > -0.2*d {
-				toInfinity, s.rising = true, true
+			toInfinity = d > 100 && s.g[j] > 0 || !edges && d < -80
+			// Rising towards the end of its range at a slope that stays the same for
+			// seven decades: without end, whatever rounding makes of it further on. (A start
+			// that was merely far off has a slope that fades.)
+			if !edges && d < -6 && s.g[j] < -0.2 {
+				if s.slopeAt == nil {
+					s.slopeAt = make([]float64, len(s.u))
+				}
+				switch {
+				case s.slopeAt[j] == 0:
+					s.slopeAt[j] = s.g[j]
+				case d < -16 && s.g[j] > 3*s.slopeAt[j] && 3*s.g[j] < s.slopeAt[j]:
+					toInfinity, s.rising = true, true
+				}
 			}
 		case linkBetween:
 			toEdge = s.g[j]*s.u[j] > 0 && math.Abs(s.u[j])-math.Abs(u0[j]) > -math.Log(edgeRatio)

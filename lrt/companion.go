@@ -53,14 +53,17 @@ func (d *Declared) ScoreWald(ctx context.Context, c Comparison, p Pair) (score, 
 	switch {
 	case !ok || p.Restricted.detail == nil || p.Full.detail == nil:
 		return none("the spaces are not both declared")
-	case r.declared().frame.layer != d.frame.layer:
-		return none("the restriction is a map, not equations")
+	case r.declared().frame.layer != d.frame.layer && d.frame.layer != nil:
+		return none("the restriction is a map on a map")
 	case p.Irregular != "" || p.Cone != nil || p.DF <= 0:
 		return none("−2 log λ has no χ² law here, and neither have its companions")
 	}
 	small := r.declared()
 	if score, err = d.score(ctx, p); err != nil {
 		return Test{}, Test{}, err
+	}
+	if small.frame.layer != d.frame.layer {
+		return score, absent("Wald", "the restriction is a map, not equations"), nil
 	}
 	wald, err = d.wald(ctx, small, p)
 	return score, wald, err
@@ -79,6 +82,9 @@ func (d *Declared) score(ctx context.Context, p Pair) (Test, error) {
 		return Test{}, err
 	}
 	q := &peak{p: newProblem(ev, co), x: p.Restricted.detail.peak.x}
+	if d.frame.layer == nil {
+		q.x = p.Restricted.Estimate // whatever maps the restricted space goes through
+	}
 	q.u = co.nearest(q.x)
 	q.f = q.p.value(q.u)
 	if ev.err != nil {
@@ -88,10 +94,18 @@ func (d *Declared) score(ctx context.Context, p Pair) (Test, error) {
 		return absent("score", "the restricted estimate is at the end of a range"), nil
 	}
 	q.p.settle(q.f)
+	g := make([]float64, co.m)
+	if q.p.gradient && d.core.expected != nil {
+		if q.p.pullBack(q.u, g) && q.p.expectedInformation(q) {
+			if inv, ok := invertInformation(q.info, co.m); ok {
+				return companionTest("score", "slope at the restricted estimate in the metric of the expected information there (Rao 1948)", quadratic(inv, g), p.DF), nil
+			}
+		}
+		return absent("score", "the expected information at the restricted estimate is not positive"), ev.err
+	}
 	if err := q.p.measure(q); err != nil {
 		return absent("score", "no curvature at the restricted estimate"), ev.err
 	}
-	g := make([]float64, co.m)
 	if q.p.gradient {
 		q.p.pullBack(q.u, g)
 	} else {
@@ -110,11 +124,42 @@ func (d *Declared) score(ctx context.Context, p Pair) (Test, error) {
 	if !ok || !finite(g) {
 		return absent("score", "the observed information at the restricted estimate is not positive"), nil
 	}
+	return companionTest("score", "slope at the restricted estimate in the metric of the observed information there (Rao 1948)", quadratic(inv, g), p.DF), nil
+}
+
+func quadratic(a, g []float64) float64 {
+	m := len(g)
 	var x float64
 	for j := range g {
-		x += g[j] * dot(inv[j*co.m:j*co.m+co.m], g)
+		x += g[j] * dot(a[j*m:j*m+m], g)
 	}
-	return companionTest("score", "slope at the restricted estimate in the metric of the observed information there (Rao 1948)", x, p.DF), nil
+	return x
+}
+
+// expectedInformation carries the model's expected information to q.info.
+func (p *problem) expectedInformation(q *peak) bool {
+	m, n := p.co.m, len(p.ev.core.params)
+	if !p.jacobian(q.u) {
+		return false
+	}
+	theta := p.root(q.u)
+	own := make([]float64, n*n)
+	if theta == nil || !p.ev.information(theta, own) {
+		return false
+	}
+	q.info = make([]float64, m*m)
+	for j := range m {
+		for k := range m {
+			for a := range n {
+				if w := p.jac[a*m+j]; w != 0 {
+					for b := range n {
+						q.info[j*m+k] += w * own[a*n+b] * p.jac[b*m+k]
+					}
+				}
+			}
+		}
+	}
+	return true
 }
 
 func (d *Declared) wald(ctx context.Context, small *Declared, p Pair) (Test, error) {

@@ -145,11 +145,21 @@ func (d *Declared) closedForm() func(any) ([]float64, error) {
 	if d.closed != nil {
 		return d.closed
 	}
-	if f := d.frame; f.layer == nil && len(f.eq.rows) == 0 && f.lower == nil {
+	if f := d.frame; f.layer == nil && len(f.eq.rows) == 0 && f.lower == nil && d.core.closed != nil {
 		return d.core.closed
+	}
+	if d.core.closedAt != nil {
+		return func(any) ([]float64, error) {
+			if theta, ok := d.core.closedAt(d); ok {
+				return theta, nil
+			}
+			return nil, errNoClosedForm
+		}
 	}
 	return nil
 }
+
+var errNoClosedForm = errors.New("no closed form")
 
 // fit maximises from the starts and dresses the outcome.
 func (d *Declared) fit(ctx context.Context, starts func(*evaluator) ([][]float64, error)) (Fit, error) {
@@ -184,6 +194,9 @@ func (d *Declared) byClosedForm(ev *evaluator, f func(any) ([]float64, error)) (
 	theta, err := ev.callClosed(f)
 	if ev.err != nil {
 		return nil, ev.err
+	}
+	if errors.Is(err, errNoClosedForm) {
+		return nil, nil
 	}
 	if err != nil {
 		return nil, &ModelError{Model: d.core.name, Func: "closed form", Err: err}

@@ -32,13 +32,28 @@ type Model[D any] struct {
 	// Hessian fills the second derivatives, row-major. It is checked too, and
 	// used only beside Gradient.
 	Hessian func(d D, theta, hessian []float64)
+	// Information fills the expected information, row-major; the score test uses
+	// it in place of the observed one. It is used only beside Gradient.
+	Information func(d D, theta, information []float64)
 	// Start returns a rough estimate; nil: a search over the ranges.
 	Start func(d D) []float64
 	// ClosedForm returns the maximum likelihood estimate of the unrestricted
 	// model. Restricted spaces get theirs by SolveBy.
 	ClosedForm func(d D) ([]float64, error)
+	// ClosedFor returns the maximum likelihood estimate of a restricted space, in
+	// root parameters, and false where it knows none; space.Implies tells what
+	// holds in it.
+	ClosedFor func(d D, space *Declared) (theta []float64, ok bool)
 	// Simulate draws data of the same design at theta.
 	Simulate func(design D, theta []float64, src rand.Source) (D, error)
+	// Exact returns the exact test of a comparison of two declared spaces of this
+	// model, of kind None with the reason where it knows none.
+	Exact func(d D, restricted, full *Declared, p Pair) (Test, error)
+	// BartlettFactor returns E(−2 log λ)/df of a comparison to the order 1/n,
+	// or an error wrapping ErrNoFactor.
+	BartlettFactor func(d D, restricted, full *Declared, p Pair) (float64, error)
+	// Pivotal says that the null law of λ is free of nuisance parameters.
+	Pivotal func(restricted, full *Declared) bool
 
 	// Budget is the largest number of evaluations of the log likelihood in one
 	// fit; 0: 20,000 + 2,000 for each parameter.
@@ -114,8 +129,13 @@ type core struct {
 	each     func(theta, each []float64)
 	gradient func(theta, g []float64)
 	hessian  func(theta, h []float64)
+	expected func(theta, info []float64)
 	start    func() []float64
 	closed   func(data any) ([]float64, error)
+	closedAt func(s *Declared) ([]float64, bool)
+	exact    func(r, f *Declared, p Pair) (Test, error)
+	factor   func(r, f *Declared, p Pair) (float64, error)
+	pivotal  func(r, f *Declared) bool
 	simulate func(theta []float64, src rand.Source) (*core, error)
 	budget   int
 	starts   int
@@ -166,6 +186,9 @@ func bindCore[D any](m Model[D], s Sample[D], id *byte) *core {
 	}
 	if m.Gradient != nil {
 		c.gradient = func(theta, g []float64) { m.Gradient(d, theta, g) }
+		if m.Information != nil {
+			c.expected = func(theta, info []float64) { m.Information(d, theta, info) }
+		}
 		if m.Hessian != nil {
 			c.hessian = func(theta, h []float64) { m.Hessian(d, theta, h) }
 		}
@@ -176,6 +199,16 @@ func bindCore[D any](m Model[D], s Sample[D], id *byte) *core {
 	if m.ClosedForm != nil {
 		c.closed = func(data any) ([]float64, error) { return m.ClosedForm(data.(D)) }
 	}
+	if m.ClosedFor != nil {
+		c.closedAt = func(s *Declared) ([]float64, bool) { return m.ClosedFor(d, s) }
+	}
+	if m.Exact != nil {
+		c.exact = func(r, f *Declared, p Pair) (Test, error) { return m.Exact(d, r, f, p) }
+	}
+	if m.BartlettFactor != nil {
+		c.factor = func(r, f *Declared, p Pair) (float64, error) { return m.BartlettFactor(d, r, f, p) }
+	}
+	c.pivotal = m.Pivotal
 	if m.Simulate != nil {
 		c.simulate = func(theta []float64, src rand.Source) (*core, error) {
 			drawn, err := m.Simulate(d, theta, src)
@@ -297,6 +330,15 @@ func (e *evaluator) grad(theta, g []float64) bool {
 	defer e.guard("Gradient", theta)
 	e.core.gradient(theta, g)
 	return e.err == nil && finite(g)
+}
+
+func (e *evaluator) information(theta, info []float64) bool {
+	if e.err != nil {
+		return false
+	}
+	defer e.guard("Information", theta)
+	e.core.expected(theta, info)
+	return e.err == nil && finite(info)
 }
 
 func (e *evaluator) hess(theta, h []float64) bool {

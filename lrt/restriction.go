@@ -34,6 +34,8 @@ type Map struct {
 	Params []Param
 	To     func(phi, theta []float64)
 	Start  []float64 // rough values of phi; nil: searched
+
+	tag string // a map of the library's own
 }
 
 // Fix holds one parameter at a value.
