@@ -170,8 +170,8 @@ func findNoncentrality(central, survival, k, x, extra float64, at func(lambda fl
 	d := 2*z*z + z*math.Sqrt(max(0, 4*z*z+4*x-2*k+2*extra))
 	lambda := d + x - k
 	lo, hi := 0.0, math.Inf(1)
-	if !(lambda > 0) || math.IsInf(lambda, 1) {
-		lambda = min(1, max(x, 1e-3))
+	if !(lambda > 0 && lambda < 1e100) {
+		lambda = min(max(x, 1e-3), 1)
 	}
 	best, bestR := lambda, math.Inf(1)
 	for range 200 {
@@ -204,13 +204,13 @@ func findNoncentrality(central, survival, k, x, extra float64, at func(lambda fl
 				next = lo + (hi-lo)/2
 			}
 		}
-		if next == lambda || next == lo || next == hi || next == 0 {
+		if next == lambda || next == lo || next == hi || next == 0 || next > 1e100 {
 			break
 		}
 		lambda = next
 	}
-	if math.IsInf(best, 1) || bestR > 0.1 {
-		return math.NaN(), &ParamError{"noncentrality", "survival", survival, "a tail that a finite noncentrality reaches"}
+	if !(bestR <= 0.1) {
+		return math.NaN(), &ParamError{"noncentrality", "survival", survival, "a tail that a noncentrality below 1e100 reaches"}
 	}
 	return best, nil
 }

@@ -185,20 +185,25 @@ func (n NoncentralT) Mean() float64 {
 	case n.Nu <= 1:
 		return n.Delta * math.Inf(1)
 	}
-	return n.Delta * math.Sqrt(n.Nu/(n.Nu-2)-n.meanDefect())
+	return n.Delta * math.Sqrt(n.meanSquare().Float64())
 }
 
-// meanDefect returns Nu/(Nu-2) - c², c = Mean/Delta. For Nu > 200 it is the series
-// of that difference in 1/Nu (from Γ's expansion; the first term left out is 1e-15 of the sum),
-// which does not cancel.
-func (n NoncentralT) meanDefect() float64 {
-	if r := 1 / n.Nu; r < 0.005 {
-		return r * (0.5 + r*(1.875+r*(5.1875+r*(12.5390625+r*(27.98046875+r*(59.3701171875+r*122.47021484375))))))
+// meanSquare returns (Mean/Delta)² = (Nu/2) (Γ((Nu-1)/2)/Γ(Nu/2))² for Nu > 1.
+func (n NoncentralT) meanSquare() dd.DD {
+	if n.Nu > 200 {
+		return dd.From(n.Nu).Div(dd.Sum(n.Nu, -2)).AddF(-n.meanDefect())
 	}
 	a := dd.From(n.Nu).MulF(0.5)
-	l := special.LogGamma(a.AddF(-0.5)).Sub(special.LogGamma(a)).MulF(2)
-	c2 := dd.Exp(l).Mul(a)
-	return dd.From(n.Nu).Div(dd.Sum(n.Nu, -2)).Sub(c2).Float64()
+	return dd.Exp(special.LogGamma(a.AddF(-0.5)).Sub(special.LogGamma(a)).MulF(2)).Mul(a)
+}
+
+// meanDefect returns Nu/(Nu-2) - (Mean/Delta)². For Nu > 200 it is the series of that difference in
+// 1/Nu (from Γ's expansion; the first term left out is 1e-15 of the sum), which does not cancel.
+func (n NoncentralT) meanDefect() float64 {
+	if r := 1 / n.Nu; n.Nu > 200 {
+		return r * (0.5 + r*(1.875+r*(5.1875+r*(12.5390625+r*(27.98046875+r*(59.3701171875+r*122.47021484375))))))
+	}
+	return dd.From(n.Nu).Div(dd.Sum(n.Nu, -2)).Sub(n.meanSquare()).Float64()
 }
 
 // Variance returns Nu(1 + Delta²)/(Nu-2) - Mean² for Nu > 2, +Inf for 1 < Nu <= 2, NaN for smaller Nu.

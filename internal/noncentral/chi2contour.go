@@ -64,12 +64,12 @@ func (p *chi2Path) result(x float64) (t special.Scaled, upper bool, kernel, slop
 	upper = p.e >= 0
 	var st, sk, ss float64
 	d2 := p.e * p.e
-	for j := 0.5; ; j++ {
+	for j := 0.5; j < maxNodes; j++ {
 		th := j * p.h
 		sh, ch := math.Sincos(th / 2)
 		sh2 := sh * sh
 		m := 2 * p.s * sh2
-		if m > cut || th > math.Pi {
+		if !(m <= cut && th <= math.Pi) {
 			break
 		}
 		sin := 2 * sh * ch

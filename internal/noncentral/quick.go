@@ -15,7 +15,7 @@ import (
 // W_j e^{-λ/2} at most 1, none leaves the range.
 const (
 	quickLambda = 600
-	quickSmall  = 1e-250
+	quickSmall  = 1e-150 // times e^{-λ/2} still a normal number
 	quickTerms  = 160
 	plain       = 0x1p-13 // terms below this part of the sum need no low parts
 )
