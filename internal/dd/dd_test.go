@@ -54,6 +54,7 @@ func TestOperations(t *testing.T) {
 			{"MulF", a.MulF(b.Hi), n().Mul(ba, n().SetFloat64(b.Hi)), 2},
 			{"Sqr", a.Sqr(), n().Mul(ba, ba), 5},
 			{"Div", a.Div(b), n().Quo(ba, bb), 10},
+			{"Inv", b.Inv(), n().Quo(n().SetInt64(1), bb), 4},
 			{"DivF", a.DivF(b.Hi), n().Quo(ba, n().SetFloat64(b.Hi)), 4},
 			{"Sqrt", a.Abs().Sqrt(), n().Sqrt(n().Abs(ba)), 4},
 		} {

@@ -268,7 +268,7 @@ func (f *Factor) cholesky(s Settings) {
 			f.SmallestKept = r
 		}
 		root := left.Sqrt()
-		inv := dd.From(1).Div(root)
+		inv := root.Inv()
 		if n := m - k - 1; n*t > 1<<15 && s.Workers != 1 {
 			parallel(s.Workers, n*t, func(w, of int) {
 				lo, hi := chunk4(n, w, of)

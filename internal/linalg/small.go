@@ -69,7 +69,7 @@ func (s *Small) Factor(x [][]float64, y []float64, tol float64) {
 		}
 		s.Rank++
 		root := left.Sqrt()
-		inv := dd.From(1).Div(root)
+		inv := root.Inv()
 		s.inv[k] = inv
 		ck[k] = root
 		for j := k + 1; j <= s.p; j++ {
