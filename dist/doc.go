@@ -60,9 +60,9 @@
 //	a > 1000, |η| <= 1.16                uniform expansion (Temme 1979; DLMF 8.12.7)      same cost for every a
 //
 //	beta law, X <= a/(a+b) by exchange
-//	b whole <= 16, 2a whole              finite sum (DLMF 8.17.24)                        no logarithm
+//	b whole <= 16, 2a whole              finite sum (complement of DLMF 8.17.24)                        no logarithm
 //	a whole <= 16, 2b whole              its complement in double-double, above 1e-10
-//	term ratio below 1/2                 positive series (DLMF 8.17.7)
+//	term ratio below 1/2                 positive series (DLMF 8.17.8)
 //	X > 0.9, Y (a+b) < 3                 complement of the series in Y, double-double     fraction is slow
 //	min(a, b) <= 1000                    continued fraction of Didonato and Morris        under 60 levels
 //	                                     (ACM TOMS 18, 1992, eq. 9)
@@ -96,62 +96,62 @@
 // tails of 1e-300, logarithms of -1e5 and degrees of freedom of 1e10 (chi2_wide, f_wide, t_wide: 1e-3 to
 // 0.1 and 1e10 to 1e12).
 //
-//	table       value       rows  median   everyday max  max
-//	chi2        tail         900  4.9e-17  4.5e-16       7.3e-16
-//	chi2        log         1800  4.4e-17  6.9e-16       7.3e-16
-//	chi2        density      900  3.4e-17  1.0e-16       1.1e-16
-//	chi2        logdensity   900  3.6e-17  9.5e-17       1.1e-16
-//	chi2        quantile      54  4.3e-17  3.3e-16       4.0e-16
-//	f           tail         900  3.9e-17  3.1e-16       4.6e-16
-//	f           log         1800  3.9e-17  5.1e-16       5.6e-16
-//	f           density      900  3.7e-17  1.0e-16       1.0e-16
-//	f           logdensity   900  3.8e-17  1.1e-16       1.1e-16
-//	f           quantile      41  4.4e-17  2.8e-16       2.8e-16
-//	t           tail         239  3.1e-17  9.3e-17       1.1e-16
-//	t           log          478  3.3e-17  1.0e-16       1.1e-16
-//	t           density      239  3.8e-17  9.5e-17       9.5e-17
-//	t           logdensity   239  3.5e-17  8.7e-17       9.5e-17
-//	t           quantile      17  4.9e-17  1.4e-16       1.4e-16
-//	betainc     tail         480  4.3e-17  5.6e-16       5.6e-16
-//	betainc     log          960  4.2e-17  8.3e-16       8.3e-16
-//	betainc     density      480  3.7e-17  9.5e-17       9.9e-17
-//	betainc     logdensity   480  3.7e-17  1.1e-16       1.1e-16
-//	betainc     quantile      21  5.0e-17  1.6e-16       1.9e-16
-//	chi2_wide   tail          60  4.8e-17  -             1.6e-16
-//	chi2_wide   log          120  4.6e-17  -             2.0e-16
-//	chi2_wide   density       60  4.4e-17  -             9.5e-17
-//	chi2_wide   logdensity    60  3.5e-17  -             1.0e-16
-//	f_wide      tail         130  3.9e-17  -             5.4e-16
-//	f_wide      log          260  5.0e-17  -             5.5e-16
-//	f_wide      density      130  3.7e-17  -             1.1e-16
-//	f_wide      logdensity   130  4.6e-17  -             9.7e-17
-//	t_wide      tail          60  3.5e-17  -             3.6e-16
-//	t_wide      log          120  4.2e-17  -             3.6e-16
-//	t_wide      density       60  3.6e-17  -             9.6e-17
-//	t_wide      logdensity    60  3.8e-17  -             9.8e-17
-//	srange      tail         177  6.1e-16  3.6e-15       1.9e-13
-//	srange      log          354  1.9e-16  3.6e-15       1.9e-13
-//	smm         tail         176  5.1e-16  2.6e-15       7.7e-14
-//	smm         log          352  1.8e-16  2.6e-15       7.7e-14
-//	ncx2        tail        1620  7.6e-17  5.9e-16       6.4e-16
-//	ncx2        log         3240  4.9e-17  5.9e-16       7.0e-16
-//	ncx2        density     1620  7.0e-17  5.5e-16       6.6e-16
-//	ncx2        logdensity  1620  3.9e-17  1.9e-16       1.9e-16
-//	ncx2        quantile      53  3.7e-17  1.1e-16       2.0e-15
-//	ncf         tail        1620  5.7e-17  8.6e-16       9.8e-16
-//	ncf         log         3240  4.8e-17  8.0e-16       1.1e-15
-//	ncf         density     1620  5.7e-17  8.0e-16       8.0e-16
-//	ncf         logdensity  1620  4.0e-17  2.4e-14       2.4e-14
-//	ncf         quantile      54  4.8e-17  2.5e-16       3.7e-16
-//	nct         tail         360  1.3e-16  7.9e-16       7.9e-16
-//	nct         log          720  7.5e-17  1.0e-15       1.0e-15
-//	nct         density      360  1.7e-16  1.5e-15       1.5e-15
-//	nct         logdensity   360  5.6e-17  8.0e-16       8.0e-16
-//	ncfpower    tail         300  5.2e-17  6.3e-16       6.3e-16
-//	ncfpower    log          600  4.5e-17  8.3e-16       8.3e-16
-//	ncfpower    density      300  4.1e-17  6.5e-16       6.5e-16
-//	ncfpower    logdensity   300  3.7e-17  1.2e-15       1.2e-15
-//	ncinv       lambda       130  4.6e-17  7.4e-16       7.4e-16
+//	table       value        rows   median  everyday max      max
+//	chi2        tail          900  4.9e-17  4.5e-16       7.3e-16
+//	chi2        log          1800  4.4e-17  6.9e-16       7.3e-16
+//	chi2        density       900  3.4e-17  1.0e-16       1.1e-16
+//	chi2        logdensity    900  3.6e-17  9.5e-17       1.1e-16
+//	chi2        quantile       54  4.3e-17  3.3e-16       4.0e-16
+//	f           tail          900  3.9e-17  3.1e-16       4.6e-16
+//	f           log          1800  3.9e-17  5.1e-16       5.6e-16
+//	f           density       900  3.7e-17  1.0e-16       1.0e-16
+//	f           logdensity    900  3.8e-17  1.1e-16       1.1e-16
+//	f           quantile       41  4.4e-17  2.8e-16       2.8e-16
+//	t           tail          239  3.1e-17  9.3e-17       1.1e-16
+//	t           log           478  3.3e-17  1.0e-16       1.1e-16
+//	t           density       239  3.8e-17  9.5e-17       9.5e-17
+//	t           logdensity    239  3.5e-17  8.7e-17       9.5e-17
+//	t           quantile       17  4.9e-17  1.4e-16       1.4e-16
+//	betainc     tail          480  4.3e-17  5.6e-16       5.6e-16
+//	betainc     log           960  4.2e-17  8.3e-16       8.3e-16
+//	betainc     density       480  3.7e-17  9.5e-17       9.9e-17
+//	betainc     logdensity    480  3.7e-17  1.1e-16       1.1e-16
+//	betainc     quantile       21  5.0e-17  1.6e-16       1.9e-16
+//	chi2_wide   tail           60  4.8e-17  -             1.6e-16
+//	chi2_wide   log           120  4.6e-17  -             2.0e-16
+//	chi2_wide   density        60  4.4e-17  -             9.5e-17
+//	chi2_wide   logdensity     60  3.5e-17  -             1.0e-16
+//	f_wide      tail          130  3.9e-17  -             5.4e-16
+//	f_wide      log           260  5.0e-17  -             5.5e-16
+//	f_wide      density       130  3.7e-17  -             1.1e-16
+//	f_wide      logdensity    130  4.6e-17  -             9.7e-17
+//	t_wide      tail           60  3.5e-17  -             3.6e-16
+//	t_wide      log           120  4.2e-17  -             3.6e-16
+//	t_wide      density        60  3.6e-17  -             9.6e-17
+//	t_wide      logdensity     60  3.8e-17  -             9.8e-17
+//	srange      tail          177  6.6e-16  3.6e-15       1.9e-13
+//	srange      log           354  1.9e-16  3.6e-15       1.9e-13
+//	smm         tail          176  5.1e-16  2.6e-15       7.7e-14
+//	smm         log           352  1.7e-16  2.6e-15       7.7e-14
+//	ncx2        tail         1620  7.6e-17  5.9e-16       6.4e-16
+//	ncx2        log          3240  4.9e-17  5.9e-16       7.0e-16
+//	ncx2        density      1620  7.0e-17  5.5e-16       6.6e-16
+//	ncx2        logdensity   1620  3.9e-17  1.9e-16       1.9e-16
+//	ncx2        quantile       53  3.7e-17  1.1e-16       2.0e-15
+//	ncf         tail         1620  5.7e-17  8.6e-16       9.8e-16
+//	ncf         log          3240  4.8e-17  8.0e-16       1.1e-15
+//	ncf         density      1620  5.7e-17  8.0e-16       8.0e-16
+//	ncf         logdensity   1620  4.0e-17  2.4e-14       2.4e-14
+//	ncf         quantile       54  4.8e-17  2.5e-16       3.7e-16
+//	nct         tail          360  1.3e-16  7.9e-16       7.9e-16
+//	nct         log           720  7.5e-17  1.0e-15       1.0e-15
+//	nct         density       360  1.7e-16  1.5e-15       1.5e-15
+//	nct         logdensity    360  5.6e-17  8.0e-16       8.0e-16
+//	ncfpower    tail          300  5.2e-17  6.3e-16       6.3e-16
+//	ncfpower    log           600  4.5e-17  8.3e-16       8.3e-16
+//	ncfpower    density       300  4.1e-17  6.5e-16       6.5e-16
+//	ncfpower    logdensity    300  3.7e-17  1.2e-15       1.2e-15
+//	ncinv       lambda        130  4.6e-17  7.4e-16       7.4e-16
 //
 // What is not promised: the far ends of quantiles are as sharp as the tail allows, which is
 // poor where the tail hardly depends on x (an error of 1e-16 in p moves a chi-squared quantile with

@@ -78,7 +78,7 @@ func BetaKernelQuick(a, b, x, y dd.DD) Scaled {
 // With the arguments exchanged so that x <= a/(a+b):
 //
 //	y (a+b) < 8 and x > 0.6, or a < 16 and x > 0.6   complement of the series in y, in double-double
-//	a < 30 or r < 0.6                                positive series in x (DLMF 8.17.7)
+//	a < 30 or r < 0.6                                positive series in x (DLMF 8.17.8)
 //	otherwise                                        Mills ratio by quadrature
 //
 // where r = max(x, x (a+b)/(a+1)) bounds the quotient of terms.

@@ -63,7 +63,7 @@ func horner(x dd.DD, n, step float64) (s dd.DD, c float64) {
 // finiteBetaMax bounds the number of terms of betaFinite.
 const finiteBetaMax = 16
 
-// betaFinite returns x^a Σ_{j<n} (a)_j/j! y^j = I_x(a, n) for a whole n and x + y = 1 (DLMF 8.17.24),
+// betaFinite returns x^a Σ_{j<n} (a)_j/j! y^j = I_x(a, n) for a whole n and x + y = 1 (complement of DLMF 8.17.24),
 // for a a multiple of 1/2 to 2^-95.
 func betaFinite(a float64, n int, x, y dd.DD) dd.DD {
 	s := dd.DD{Hi: 1}

@@ -28,7 +28,15 @@ func main() {
 	worst := flag.Bool("worst", false, "print the worst row of each line")
 	over := flag.Float64("over", 1e-12, "print every row of our laws with a larger error, and its conditioning")
 	speed := flag.Bool("speed", true, "time the laws")
+	doc := flag.Bool("doc", false, "print only the table of the package documentation of dist")
 	flag.Parse()
+	if *doc {
+		if err := printDoc(os.Stdout, *dir); err != nil {
+			fmt.Fprintln(os.Stderr, "accuracy:", err)
+			os.Exit(1)
+		}
+		return
+	}
 	if err := run(os.Stdout, *dir, *worst, *over, *speed); err != nil {
 		fmt.Fprintln(os.Stderr, "accuracy:", err)
 		os.Exit(1)
@@ -68,6 +76,54 @@ func run(out io.Writer, dir string, worst bool, over float64, speed bool) error 
 		times(out)
 	}
 	return nil
+}
+
+// printDoc prints the lines that stand in the package documentation.
+func printDoc(out io.Writer, dir string) error {
+	lines, err := docLines(dir)
+	if err != nil {
+		return err
+	}
+	fmt.Fprintf(out, "//\t%-10s  %-10s  %5s  %7s  %-12s  %7s\n", "table", "value", "rows", "median", "everyday max", "max")
+	for _, l := range lines {
+		day := "-"
+		if l.Everyday > 0 {
+			day = fmt.Sprintf("%.1e", l.MaxEveryday)
+		}
+		fmt.Fprintf(out, "//\t%-10s  %-10s  %5d  %.1e  %-12s  %.1e\n", l.table, l.kind, l.N, l.Median, day, l.Max)
+	}
+	return nil
+}
+
+type docLine struct {
+	table, kind string
+	accuracy.Summary
+}
+
+// docLines summarizes all tables but for the larger tails.
+func docLines(dir string) (lines []docLine, err error) {
+	inverse, err := accuracy.LoadInverse(dir)
+	if err != nil {
+		return nil, err
+	}
+	for _, t := range accuracy.Tables {
+		rows, err := accuracy.Load(dir, t)
+		if err != nil {
+			return nil, err
+		}
+		m := accuracy.Measure(t, rows)
+		m["quantile"] = accuracy.MeasureInverse(t, inverse)
+		for _, kind := range []string{"tail", "log", "density", "logdensity", "quantile"} {
+			if len(m[kind]) > 0 {
+				lines = append(lines, docLine{t.File, kind, accuracy.Summarize(m[kind])})
+			}
+		}
+	}
+	rs, err := accuracy.MeasureFinders(dir)
+	if err != nil {
+		return nil, err
+	}
+	return append(lines, docLine{"ncinv", "lambda", accuracy.Summarize(rs)}), nil
 }
 
 const head = "table\tvalue\trows\tmedian\tmax everyday\tmax\t> 1e-12\tnot finite\t\n"
