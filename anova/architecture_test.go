@@ -21,9 +21,7 @@ import (
 
 // lawFiles are the files that may use laws: none of them makes the p-value of a comparison.
 var lawFiles = []string{
-	"effect.go",       // limits of a noncentrality
-	"simultaneous.go", // critical values of intervals
-	"plan.go",         // power at a stated effect
+	"effect.go", // limits of a noncentrality
 }
 
 // TestImports: tables are made from comparisons, never from linear algebra or

@@ -45,6 +45,28 @@
 // both go with the same F. For split plots, nested factors and other designs
 // with several errors, give each comparison its lrt.ErrorPair.
 //
+// # Following up
+//
+// Means gives the means of groups as observed and by the model, covariates held
+// and other factors averaged as stated. Groups.Test tests contrasts of them: each is
+// the model restricted by one equation, inside the model, so that t² is the F of
+// a comparison; Method says how the family is accounted for, and raw p-values and
+// intervals are always kept beside. Row.Effect and Table.Effects give effect sizes
+// with intervals, ContrastResult.Standardized differences in error standard deviations.
+//
+// # Planning
+//
+// A Design states the means worth finding before there are data. Its Power,
+// SampleSize and Detectable fit the comparisons that Crossed would make for data
+// to the expected means, so that plan and analysis test the same. There is no
+// power at an estimated effect: it would be the p-value in other words.
+//
+// # Writing
+//
+// Table, Groups, Family, Power and Size have a Report: one value with WriteText
+// and WriteMarkdown for people and WriteCSV and WriteJSON for programs, whose keys are
+// a promise (see each Report method). p is never written as zero unless the fit is perfect.
+//
 // # What a table does not show
 //
 // F is exact for independent normal errors of one variance about the mean of the

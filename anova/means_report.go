@@ -67,7 +67,7 @@ func (g *Groups) Report() Report {
 func (g *Groups) held() []string {
 	var n []string
 	for _, h := range g.at {
-		s := fmt.Sprintf("%s held at %s", h.Field, rounded(h.Value, 6))
+		s := fmt.Sprintf("%s held at %s", h.Field, plain(h.Value))
 		if !h.Stated {
 			s += ", its mean over the observations"
 		}
@@ -180,7 +180,7 @@ func (f Family) intervals() string {
 	case Holm:
 		return "intervals hold at once at " + percent + " (by Bonferroni: Holm has none of its own, so that an interval may hold the null value where the adjusted p is small)"
 	case Scheffe:
-		return fmt.Sprintf("intervals hold at once at %s for every contrast of the groups (%s dimensions)", percent, rounded(f.dimension, 6))
+		return fmt.Sprintf("intervals hold at once at %s for every contrast of the groups (%s dimensions)", percent, plain(f.dimension))
 	case Unadjusted:
 		return "intervals hold at " + percent + " each, not at once"
 	}

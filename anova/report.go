@@ -117,6 +117,11 @@ func (v Value) exact() string {
 	return strconv.FormatFloat(v.Number, 'g', -1, 64)
 }
 
+// plain writes x to at most 6 significant digits, for a sentence.
+func plain(x float64) string {
+	return strings.Replace(strconv.FormatFloat(x, 'g', 6, 64), "-", "−", 1)
+}
+
 // rounded writes x to so many significant digits, without an exponent where
 // that is readable, with the typographic minus.
 func rounded(x float64, digits int) string {

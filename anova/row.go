@@ -161,5 +161,11 @@ func (r Row) note() string {
 	for errors.As(err, &c) {
 		err = c.Err
 	}
+	switch {
+	case errors.Is(err, lrt.ErrNoErrorDF):
+		return "not tested: " + lrt.ErrNoErrorDF.Error()
+	case errors.Is(err, lrt.ErrNoVariation):
+		return "not tested: " + lrt.ErrNoVariation.Error()
+	}
 	return err.Error()
 }

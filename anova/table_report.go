@@ -159,7 +159,7 @@ func (t Table) notes(shared bool) []string {
 		n = append(n, r.question(shared))
 	}
 	if m := t.model(); m != nil {
-		if shared {
+		if e, _ := t.Error(); shared && e.DF > 0 {
 			n = append(n, "error: what "+clip(bare(m))+" leaves")
 		}
 		if t.strata() {

@@ -188,6 +188,16 @@ func (q SizeSearch) Solve(ctx context.Context) (Size, error) {
 	}
 }
 
+// uneven is Σ n²/Step: of two designs of one cost the one nearer to the
+// allocation is taken, since nothing else tells them apart where means are equal.
+func (s *sizer) uneven(n []int) float64 {
+	var u float64
+	for i, v := range n {
+		u += float64(v) * float64(v) / float64(s.Step[i])
+	}
+	return u
+}
+
 // around looks at every cheaper neighbour of n: one replicate less, or with Free
 // up to four units less in a group, some of them replaced by up to twelve in
 // another. It returns the cheapest that keeps the power, else all of them.
@@ -237,7 +247,7 @@ func (s *sizer) around(n []int, fewer bool) (better []int, cheaper []Neighbour, 
 		if err != nil {
 			return nil, nil, err
 		}
-		if v >= s.Power && c < best {
+		if v >= s.Power && (c < best || c == best && s.uneven(m) < s.uneven(better)) {
 			better, best = m, c
 		}
 		cheaper = append(cheaper, Neighbour{m, c, v})
