@@ -138,6 +138,7 @@ func (s *csvScan) configure() error {
 	if s.workers == 0 {
 		s.workers = runtime.GOMAXPROCS(0)
 	}
+	s.ends = 0x0101010101010101 * uint64(d)
 	for i := range s.special {
 		s.special[i] = byte(i) == d || i == '\n' || i == '"'
 	}

@@ -24,6 +24,7 @@ type csvScan struct {
 	delimiter, mark byte
 	workers         int
 	special         [256]bool // ends a field without quotes, or is a quote
+	ends            uint64    // eight delimiters
 	body            int       // offset of the first row
 	seed            maphash.Seed
 	columns         []csvColumn
@@ -323,7 +324,12 @@ func (s *csvScan) attempt(k *csvChunk) (again bool) {
 		for f := 0; ; f++ {
 			c := &s.columns[f]
 			q := -1
-			if !k.labelled[f] && !c.skip && !c.likeNumber {
+			if k.labelled[f] {
+				if at, next := k.tables[f].quick(b, p, s.ends); next > 0 {
+					c.index[r] = at
+					q = next
+				}
+			} else if !c.skip && !c.likeNumber {
 				if hi, lo, size, ok := decimal.Scan(b[p:], s.mark); ok {
 					q = p + size
 					if q < len(b) && b[q] == '\r' && q+1 < len(b) && b[q+1] == '\n' {
