@@ -63,11 +63,11 @@ func (s *study) pairsInWords(alpha float64) (out []string) {
 	var shown, open []string
 	widest := s.pairs[0]
 	for _, q := range s.pairs {
-		if q.difference.Value > widest.difference.Value {
+		if q.Estimate.Value > widest.Estimate.Value {
 			widest = q
 		}
-		if q.joint <= alpha {
-			shown = append(shown, fmt.Sprintf("%s over %s by %s (%s to %s)", q.over, q.under, dec(q.difference.Value, places), dec(q.lower, places), dec(q.upper, places)))
+		if q.AdjustedP <= alpha {
+			shown = append(shown, fmt.Sprintf("%s over %s by %s (%s to %s)", q.over, q.under, dec(q.Estimate.Value, places), dec(q.Lower, places), dec(q.Upper, places)))
 		} else {
 			open = append(open, q.over+" and "+q.under)
 		}
@@ -82,7 +82,7 @@ func (s *study) pairsInWords(alpha float64) (out []string) {
 	case len(shown) > 0:
 		out = append(out, fmt.Sprintf("The difference is %s.", shown[0]))
 	default:
-		out = append(out, fmt.Sprintf("No single pair is shown to differ; the widest difference is %s over %s by %s (%s to %s).", widest.over, widest.under, dec(widest.difference.Value, places), dec(widest.lower, places), dec(widest.upper, places)))
+		out = append(out, fmt.Sprintf("No single pair is shown to differ; the widest difference is %s over %s by %s (%s to %s).", widest.over, widest.under, dec(widest.Estimate.Value, places), dec(widest.Lower, places), dec(widest.Upper, places)))
 	}
 	return out
 }
@@ -91,10 +91,10 @@ func (s *study) pairsInWords(alpha float64) (out []string) {
 func (s *study) againstPlan(q *plan) string {
 	least, most := 0, 0
 	for _, r := range s.pairs {
-		if r.lower >= q.difference {
+		if r.Lower >= q.difference {
 			least++
 		}
-		if math.Max(math.Abs(r.lower), math.Abs(r.upper)) < q.difference {
+		if math.Max(math.Abs(r.Lower), math.Abs(r.Upper)) < q.difference {
 			most++
 		}
 	}

@@ -7,92 +7,76 @@ import (
 	"math"
 	"slices"
 
-	"subsume.example/dist"
-	"subsume.example/glm"
+	"subsume.example/anova"
 )
 
 // ways says how the groups compare: each mean, and each pair.
 type ways struct {
 	at    []float64 // where the covariates are held: their means over the rows used
-	means []glm.Prediction
+	means []anova.Group
 	pairs []pairing
+}
+
+// pairing is the difference of two groups, turned so that it is not negative.
+type pairing struct {
+	over, under string
+	anova.ContrastResult
 }
 
 // mostGroups is the largest number of groups whose pairs are compared, and mostPairs
 // that of the pairs shown.
 const (
-	mostGroups = 100
+	mostGroups = 40
 	mostPairs  = 45
 )
 
-// pairing is the difference between two groups.
-type pairing struct {
-	over, under  string // the estimate of over − under is not negative
-	difference   glm.Estimate
-	joint        float64 // p, and interval, that hold for all pairs together, by Bonferroni's inequality
-	lower, upper float64
-}
-
 // follow estimates the mean of every group where the covariates are equal, and
-// every difference of two groups.
+// tests every difference of two groups.
 func (s *study) follow(ctx context.Context) error {
-	columns := []glm.Column{glm.Labels(s.group, s.groups)}
-	for _, c := range s.covariates {
-		v, err := s.data.Values(c)
-		if err != nil {
-			return err
-		}
-		m := mean(v)
-		s.at = append(s.at, m)
-		columns = append(columns, glm.Numbers(c, slices.Repeat([]float64{m}, len(s.groups))))
-	}
-	rows, err := glm.NewData(columns...)
+	groups, err := anova.Means(ctx, s.full, []string{s.group}, nil, s.settings())
 	if err != nil {
 		return err
 	}
-	if s.means, _, err = s.fullFit.Predict(ctx, rows); err != nil {
-		return err
+	s.means = groups.List()
+	for _, c := range s.covariates {
+		for _, h := range groups.At() {
+			if h.Field == c {
+				s.at = append(s.at, h.Value)
+			}
+		}
 	}
 	if len(s.groups) > mostGroups {
 		return nil
 	}
-	name := map[string]string{}
-	for _, c := range s.fullFit.Coefficients {
-		for _, g := range s.groups {
-			if c.Name == s.group+"="+g {
-				name[g] = c.Name
-			}
-		}
+	family, err := groups.Test(ctx, groups.Pairs(), anova.Bonferroni, s.settings())
+	if err != nil {
+		return err
 	}
-	for b, under := range s.groups {
-		for _, over := range s.groups[:b] {
-			e, err := s.fullFit.Combination(glm.Weight{Name: name[over], Coef: 1}, glm.Weight{Name: name[under], Coef: -1})
-			if err != nil {
-				return err
-			}
-			q := pairing{over: over, under: under, difference: e}
-			if e.Value < 0 {
-				q.over, q.under = under, over
-				q.difference.Value, q.difference.T = -e.Value, -e.T
-				q.difference.Lower, q.difference.Upper = -e.Upper, -e.Lower
-			}
-			s.pairs = append(s.pairs, q)
-		}
+	for _, l := range family.Lines() {
+		s.pairs = append(s.pairs, s.turned(l))
 	}
-	s.adjust()
+	slices.SortStableFunc(s.pairs, func(a, b pairing) int { return cmp.Compare(a.LogP, b.LogP) })
 	return nil
 }
 
-// adjust takes into account that there are many pairs.
-func (s *study) adjust() {
-	slices.SortStableFunc(s.pairs, func(a, b pairing) int { return cmp.Compare(a.difference.P, b.difference.P) })
-	m := float64(len(s.pairs))
-	t := dist.StudentT{Nu: float64(s.fullFit.DFError)}.UpperQuantile((1 - s.level) / (2 * m))
-	for i := range s.pairs {
-		q := &s.pairs[i]
-		q.joint = min(1, m*q.difference.P)
-		q.lower, q.upper = q.difference.Value-t*q.difference.SE, q.difference.Value+t*q.difference.SE
+// turned names the groups of a pair and turns the difference so that it is not negative.
+func (s *study) turned(l anova.ContrastResult) pairing {
+	q := pairing{ContrastResult: l}
+	for i, w := range l.Weights {
+		switch {
+		case w > 0:
+			q.over = s.means[i].Name
+		case w < 0:
+			q.under = s.means[i].Name
+		}
 	}
+	if l.Estimate.Value < 0 {
+		q.over, q.under = q.under, q.over
+		q.Estimate.Value, q.Estimate.T = -l.Estimate.Value, -l.Estimate.T
+		q.Estimate.Lower, q.Estimate.Upper = -l.Estimate.Upper, -l.Estimate.Lower
+		q.Lower, q.Upper = -l.Upper, -l.Lower
+	}
+	return q
 }
 
 // writeGroups writes means and differences.
@@ -109,12 +93,12 @@ func (s *study) writeGroups(p *page) {
 	}
 	p.line("Mean %s%s, with %s intervals:", s.response, where, percent(s.level))
 	p.line("")
-	t := p.table("lrrrrr")
-	t.row(s.group, "rows", "mean", "standard error", "from", "to")
+	t := p.table("lrrrrrrr")
+	t.row(s.group, "rows", "as measured", "SD", "mean", "standard error", "from", "to")
 	places := placesFor(s.fullFit.SD)
-	for i, g := range s.groups {
-		m := s.means[i]
-		t.row(g, fmt.Sprint(s.counts[i]), dec(m.Value, places), dec(m.SE, places+1), dec(m.Lower, places), dec(m.Upper, places))
+	for _, m := range s.means {
+		a := m.Adjusted
+		t.row(m.Name, fmt.Sprint(m.N), dec(m.Raw.Mean, places), dec(m.Raw.SD, places), dec(a.Value, places), dec(a.SE, places+1), dec(a.Lower, places), dec(a.Upper, places))
 	}
 	t.end()
 	s.writePairs(p, places)
@@ -142,8 +126,8 @@ func (s *study) writePairs(p *page, places int) {
 		if i == mostPairs {
 			break
 		}
-		cells := []string{q.over + " over " + q.under, dec(q.difference.Value, places), dec(q.lower, places), dec(q.upper, places),
-			prob(q.difference.P, math.Log(q.difference.P)), prob(q.joint, math.Log(q.joint))}
+		cells := []string{q.over + " over " + q.under, dec(q.Estimate.Value, places), dec(q.Lower, places), dec(q.Upper, places),
+			prob(q.P, q.LogP), prob(q.AdjustedP, q.AdjustedLogP)}
 		t.row(cells[:len(head)]...)
 	}
 	t.end()
@@ -158,12 +142,4 @@ func placesFor(x float64) int {
 		return 3
 	}
 	return min(max(2-int(math.Floor(math.Log10(x))), 0), 8)
-}
-
-func mean(v []float64) float64 {
-	sum := 0.0
-	for _, x := range v {
-		sum += x
-	}
-	return sum / float64(len(v))
 }

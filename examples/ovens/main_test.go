@@ -14,6 +14,7 @@ import (
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
+	"gonum.org/v1/gonum/stat"
 )
 
 var update = flag.Bool("update", false, "rewrite the golden files")
@@ -276,7 +277,7 @@ func TestSpread(t *testing.T) {
 			y = append(y, math.Round(1000*(3+float64(g)*rng.NormFloat64()+rng.NormFloat64()))/1000)
 			fmt.Fprintf(&b, "%.3f,%c\n", y[len(y)-1], 'a'+rune(g))
 		}
-		m, ss := mean(y), 0.0
+		m, ss := stat.Mean(y, nil), 0.0
 		for _, v := range y {
 			ss += (v - m) * (v - m)
 		}

@@ -143,22 +143,28 @@ type recValue struct {
 
 type recMean struct {
 	Group string  `json:"group"`
-	Value float64 `json:"value"`
+	N     float64 `json:"n"`
+	Raw   float64 `json:"mean_as_measured"`
+	RawSD float64 `json:"sd_as_measured"`
+	Value float64 `json:"adjusted_mean"`
 	SE    float64 `json:"standard_error"`
 	Lower float64 `json:"lower"`
 	Upper float64 `json:"upper"`
 }
 
 type recPair struct {
-	Over  string  `json:"over"`
-	Under string  `json:"under"`
-	Value float64 `json:"difference"`
-	SE    float64 `json:"standard_error"`
-	T     float64 `json:"t"`
-	P     float64 `json:"p_raw"`
-	Joint float64 `json:"p_adjusted"`
-	Lower float64 `json:"lower_simultaneous"`
-	Upper float64 `json:"upper_simultaneous"`
+	Over       string  `json:"over"`
+	Under      string  `json:"under"`
+	Hypothesis string  `json:"hypothesis"`
+	Value      float64 `json:"difference"`
+	SE         float64 `json:"standard_error"`
+	T          float64 `json:"t"`
+	P          float64 `json:"p_raw"`
+	LogP       float64 `json:"log_p_raw"`
+	Joint      float64 `json:"p_adjusted"`
+	LogJoint   float64 `json:"log_p_adjusted"`
+	Lower      float64 `json:"lower_simultaneous"`
+	Upper      float64 `json:"upper_simultaneous"`
 }
 
 type recMultiplicity struct {

@@ -142,13 +142,13 @@ func (s *study) recordEstimates(r *record) {
 	for i, c := range s.covariates {
 		e.At = append(e.At, recValue{c, s.at[i]})
 	}
-	for i, g := range s.groups {
-		m := s.means[i]
-		e.Means = append(e.Means, recMean{g, m.Value, m.SE, m.Lower, m.Upper})
+	for _, m := range s.means {
+		a := m.Adjusted
+		e.Means = append(e.Means, recMean{m.Name, m.N, m.Raw.Mean, m.Raw.SD, a.Value, a.SE, a.Lower, a.Upper})
 	}
 	for _, q := range s.pairs {
-		d := q.difference
-		e.Pairs = append(e.Pairs, recPair{q.over, q.under, d.Value, d.SE, d.T, d.P, q.joint, q.lower, q.upper})
+		d := q.Estimate
+		e.Pairs = append(e.Pairs, recPair{q.over, q.under, q.Row.Hypothesis(), d.Value, d.SE, d.T, q.P, q.LogP, q.AdjustedP, q.AdjustedLogP, q.Lower, q.Upper})
 	}
 	r.Estimates = e
 	r.Multiplicity = recMultiplicity{"all pairs of groups", len(s.pairs), "Bonferroni", "Bonferroni"}

@@ -67,7 +67,7 @@ func (s *study) spreadModel() lrt.Model[rowsOf] {
 func (s *study) spreadStart() []float64 {
 	theta := make([]float64, 0, 2*len(s.groups)+len(s.covariates))
 	for _, m := range s.means {
-		theta = append(theta, m.Value)
+		theta = append(theta, m.Adjusted.Value)
 	}
 	for _, name := range s.covariates {
 		c, _ := s.fullFit.Coefficient(name) // the model has it
