@@ -553,3 +553,28 @@ func TestWorkers(t *testing.T) {
 
 // streamed hides that data can be sliced.
 type streamed struct{ glm.Source }
+
+// TestPerfectDecimals: a perfect fit is seen through decimals that float64 cannot hold.
+func TestPerfectDecimals(t *testing.T) {
+	var x, y []string
+	for i := range 12 {
+		x = append(x, fmt.Sprintf("%d.%d", i, (3*i)%10))
+		y = append(y, fmt.Sprintf("%.2f", 0.7+0.3*(float64(i)+float64((3*i)%10)/10)))
+	}
+	d, err := glm.NewData(glm.Decimals("y", y), glm.Decimals("x", x))
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := compare(t, model(t, d, nil, one), model(t, d, nil, one, cx))
+	if !math.IsInf(r.Exact.Statistic, 1) || !r.HasWarning("nil-residual") {
+		t.Errorf("F = %g, %v", r.Exact.Statistic, r.Warnings)
+	}
+	// One unit in the last decimal is not nil.
+	y[5] = "2.71"
+	if d, err = glm.NewData(glm.Decimals("y", y), glm.Decimals("x", x)); err != nil {
+		t.Fatal(err)
+	}
+	if r := compare(t, model(t, d, nil, one), model(t, d, nil, one, cx)); math.IsInf(r.Exact.Statistic, 1) {
+		t.Errorf("F = %g", r.Exact.Statistic)
+	}
+}

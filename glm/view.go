@@ -115,14 +115,17 @@ func ordered(gs []int) bool {
 }
 
 // nilBelow returns the sum of squares, on the joint's scale, that counts as nil:
-// the response is known to half a unit in its last place, the fitted values to a few.
+// the response is known to half a unit in its last place and the fitted values to
+// a few, and a residual sum of squares is the remainder of q subtractions in
+// double-double from the sum of squares of the response.
 func (j *joint) nilBelow() float64 {
 	unit := 2 * 0x1p-52
 	if j.decimal {
 		unit = 0x1p-94
 	}
 	y := math.Ldexp(j.maxY, -j.yExp()) * unit
-	return float64(j.rows) * y * y
+	q := float64(j.factor.Rank)
+	return math.Max(float64(j.rows)*y*y, (16+4*q)*0x1p-104*j.gram.RHS(0, 0).Float64())
 }
 
 func (j *joint) yExp() int { return j.exp[len(j.exp)-1] }
