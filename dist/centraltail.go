@@ -65,3 +65,16 @@ func densityAtZero(a, c float64) float64 {
 
 // half returns v/2 as a double-double.
 func half(v float64) dd.DD { return dd.DD{Hi: v * 0.5} }
+
+// logDensity returns the logarithm of a density: from the quick answer where that lies in the normal
+// range and its logarithm is not near 0, which would show its error.
+func logDensity[L interface {
+	density(x float64, quick bool) special.Scaled
+}](law L, x float64) float64 {
+	if d := law.density(x, true); d.L.Hi == 0 && d.M.Hi > 1e-290 {
+		if l := d.Log(); math.Abs(l) > 1 {
+			return l
+		}
+	}
+	return law.density(x, false).Log()
+}

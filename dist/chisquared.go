@@ -127,7 +127,7 @@ func (c ChiSquared) LogProb(x float64) float64 {
 	case x == 0:
 		return math.Log(densityAtZero(c.K/2, 0.5))
 	}
-	return c.density(x, false).Log()
+	return logDensity(c, x)
 }
 
 func (c ChiSquared) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {

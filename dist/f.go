@@ -176,7 +176,7 @@ func (f F) LogProb(x float64) float64 {
 		l := half(f.D2).AddF(1).Mul(dd.Log1p(u))
 		return -(l.Hi + l.Lo)
 	}
-	return f.density(x, false).Log()
+	return logDensity(f, x)
 }
 
 func (f F) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {

@@ -146,7 +146,7 @@ func (s StudentT) LogProb(t float64) float64 {
 	if v, done := realEnds(t, s.valid(), math.Inf(-1), math.Inf(-1)); done {
 		return v
 	}
-	return s.density(t, false).Log()
+	return logDensity(s, t)
 }
 
 func (s StudentT) tailAt(t float64, upper bool) (tail, logTail, hazard float64) {

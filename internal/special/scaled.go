@@ -57,6 +57,10 @@ func (s Scaled) Log() float64 {
 	if s.M.Hi == 0 {
 		return math.Inf(-1)
 	}
+	if s.L.Hi == 0 && s.M.Hi > 0x1p-1000 && s.M.Hi < 0x1p1000 {
+		l := dd.LogQuick(s.M)
+		return l.Hi + l.Lo
+	}
 	l := s.LogDD()
 	return l.Hi + l.Lo
 }
@@ -64,10 +68,13 @@ func (s Scaled) Log() float64 {
 // LogComplement returns log(1 - value), accurate also when the value is tiny.
 func (s Scaled) LogComplement() float64 {
 	v := s.DD()
-	if v.Hi < 1e-290 {
+	switch {
+	case v.Hi < 1e-290:
 		return -s.Float64()
-	}
-	if v.Hi >= 1 {
+	case v.Hi > 1e-12 && v.Hi < 0.999:
+		l := dd.LogQuick(v.Neg().AddF(1))
+		return l.Hi + l.Lo
+	case v.Hi >= 1:
 		if v.Hi == 1 && v.Lo < 0 {
 			return math.Log(-v.Lo)
 		}
