@@ -175,7 +175,8 @@ func (c ChiSquared) Rand(src rand.Source) float64 {
 	if !c.valid() {
 		return math.NaN()
 	}
-	return 2 * math.Exp(logGammaVariate(src, c.K/2))
+	g, s := gammaVariate(src, c.K/2)
+	return timesExp(2*g, s)
 }
 
 // String returns "ChiSquared(5)".

@@ -231,17 +231,19 @@ func (f F) Variance() float64 {
 	return 2 * m * m * (1/f.D1 + (1-2/f.D1)/f.D2) / (1 - 4/f.D2)
 }
 
-// Rand draws one value from src, by two gamma variates in logarithms (small
-// degrees of freedom neither underflow to 0/0 nor overflow early).
+// Rand draws one value from src, by two gamma variates (Marsaglia and Tsang 2000) whose powers for
+// small degrees of freedom stay logarithms, so that they neither underflow to 0/0 nor overflow early.
 func (f F) Rand(src rand.Source) float64 {
 	if !f.valid() {
 		return math.NaN()
 	}
-	num := logGammaVariate(src, f.D1/2) - math.Log(f.D1/2)
+	g, s := gammaVariate(src, f.D1/2)
+	g /= f.D1 / 2
 	if math.IsInf(f.D2, 1) {
-		return math.Exp(num)
+		return timesExp(g, s)
 	}
-	return math.Exp(num - (logGammaVariate(src, f.D2/2) - math.Log(f.D2/2)))
+	h, t := gammaVariate(src, f.D2/2)
+	return timesExp(g/(h/(f.D2/2)), s-t)
 }
 
 // String returns "F(3, 20)".

@@ -213,7 +213,8 @@ func (s StudentT) Rand(src rand.Source) float64 {
 	if math.IsInf(s.Nu, 1) {
 		return z
 	}
-	return z * math.Exp(-0.5*(logGammaVariate(src, s.Nu/2)-math.Log(s.Nu/2)))
+	g, e := gammaVariate(src, s.Nu/2)
+	return timesExp(z/math.Sqrt(g/(s.Nu/2)), -0.5*e)
 }
 
 // String returns "StudentT(12)".
