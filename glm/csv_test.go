@@ -221,6 +221,10 @@ func TestNotNumericSaysWhere(t *testing.T) {
 	if !errors.Is(err, ErrNotNumeric) || !errors.As(err, &e) || e.Line != 4 || e.Column != 1 || e.Text != "n/a" {
 		t.Errorf("%v", err)
 	}
+	_, err = Normal(context.Background(), d, "y", []Term{Constant{}}, nil)
+	if !errors.Is(err, ErrNotNumeric) || !errors.As(err, &e) || e.Line != 4 {
+		t.Errorf("as a response: %v", err)
+	}
 }
 
 func TestLines(t *testing.T) {

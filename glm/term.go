@@ -73,6 +73,9 @@ func findNumeric(src Source, name string) (int, error) {
 	i, f, err := findField(src, name)
 	if err == nil && !f.Numeric() {
 		err = &ColumnError{Column: name, Row: -1, Err: ErrNotNumeric}
+		if d, ok := src.(*Data); ok {
+			_, err = d.numeric(name) // which knows where the first text stands in the file
+		}
 	}
 	return i, err
 }

@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"strings"
 
 	"subsume.example/glm"
@@ -87,6 +88,9 @@ func (s *study) hint(err error) error {
 	return err
 }
 
+// mostColumns is the largest number of groups shown side by side.
+const mostColumns = 10
+
 // writeData says what was read, used and left out.
 func (s *study) writeData(p *page) {
 	p.title("Data")
@@ -98,7 +102,12 @@ func (s *study) writeData(p *page) {
 	for _, e := range a.Emptied {
 		p.line("  %s %q has no row left and is not compared", e.Column, e.Level)
 	}
-	p.line("")
+	p.gap()
+	if len(s.groups) > mostColumns {
+		p.line("%s: %d groups of %d to %d rows", s.group, len(s.groups), slices.Min(s.counts), slices.Max(s.counts))
+		p.line("digest of the values used: %s", s.data.Observations(s.response).Rows)
+		return
+	}
 	t := p.table("l" + strings.Repeat("r", len(s.groups)))
 	t.row(append([]string{s.group}, s.groups...)...)
 	cells := []string{"rows"}
