@@ -66,6 +66,8 @@
 // Table, Groups, Family, Power and Size have a Report: one value with WriteText
 // and WriteMarkdown for people and WriteCSV and WriteJSON for programs, whose keys are
 // a promise (see each Report method). p is never written as zero unless the fit is perfect.
+// NewRecord makes the account of an analysis that an auditor needs, byte-equal on
+// a rerun.
 //
 // # What a table does not show
 //

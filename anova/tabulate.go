@@ -28,8 +28,8 @@ func Tabulate(ctx context.Context, comparisons []lrt.Comparison, s *lrt.Settings
 		}
 	}
 	cs := append([]lrt.Comparison(nil), comparisons...)
-	if len(linear) > 0 {
-		whole, err := wholeModel(ctx, linear)
+	if m := largestModel(comparisons); m != nil {
+		whole, err := wholeModel(ctx, m)
 		if err != nil {
 			return Table{}, err
 		}
@@ -88,10 +88,9 @@ func isLinear(c lrt.Comparison) bool {
 	return linear && c.Restricted != nil && c.Full != nil
 }
 
-// wholeModel is the comparison of the smaller error space of the first row with
-// the constant (or with nothing, where it holds no constant). It gives the totals.
-func wholeModel(ctx context.Context, linear []lrt.Comparison) (lrt.Comparison, error) {
-	m := errorModel(linear[0])
+// wholeModel is the comparison of the model whose residual is the error with the
+// constant (or with nothing, where it holds no constant). It gives the totals.
+func wholeModel(ctx context.Context, m *glm.Model) (lrt.Comparison, error) {
 	var base []glm.Term
 	if m.HasConstant() {
 		base = []glm.Term{glm.Constant{}}
@@ -104,12 +103,24 @@ func wholeModel(ctx context.Context, linear []lrt.Comparison) (lrt.Comparison, e
 	return lrt.Comparison{Name: "all terms", Restricted: none, Full: m}, nil
 }
 
-// errorModel is the model whose residual is the error of a row.
-func errorModel(c lrt.Comparison) *glm.Model {
-	if c.Error != nil {
-		return c.Error.Smaller.(*glm.Model)
+// largestModel is the model whose residual is the error of the first row that
+// has one; nil where none has.
+func largestModel(cs []lrt.Comparison) *glm.Model {
+	for _, c := range cs {
+		s := c.Full
+		if c.Error != nil {
+			s = c.Error.Smaller
+		}
+		switch s := s.(type) {
+		case *refused:
+			return s.model
+		case *glm.Model:
+			if isLinear(c) {
+				return s
+			}
+		}
 	}
-	return c.Full.(*glm.Model)
+	return nil
 }
 
 // explain names the cells that a row of numerator rank 0 would need.
