@@ -309,8 +309,12 @@ func (s *study) writeSpread(p *page, alpha float64) {
 	}
 	r := s.spread
 	t := r.Test()
-	p.text("Equal spread: one standard deviation against one for each group, by likelihood: −2 log λ = %s with %g df, p = %s (%s)%s",
-		fig(r.Statistic, 4), r.Pair.DF, prob(t.P, t.LogP), r.Recommended, verdict(t.P <= alpha, ": spreads differ, and the F test above may mislead.", "."))
+	law := ""
+	if t.Simulation != nil {
+		law = fmt.Sprintf("; among %d simulated normal sets p = %s", t.Simulation.Draws, prob(t.P, t.LogP))
+	}
+	p.text("Equal spread: one standard deviation against one for each group, by likelihood: −2 log λ = %s, χ² with %g df, p = %s (asymptotic)%s%s",
+		fig(r.Statistic, 4), r.Pair.DF, prob(r.ChiSquared.P, r.ChiSquared.LogP), law, verdict(t.P <= alpha, ": spreads differ, and the F test above may mislead.", "."))
 	if w := s.without; w != nil && !math.IsNaN(w.spread) {
 		p.text("Without %s: p = %s.", s.place(s.worst), prob(w.spread, math.Log(w.spread)))
 	}

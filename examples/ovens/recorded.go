@@ -7,8 +7,8 @@ import (
 	"os"
 	"path/filepath"
 	"runtime"
-	"runtime/debug"
 
+	"subsume.example"
 	"subsume.example/dist"
 	"subsume.example/glm"
 	"subsume.example/internal/canon"
@@ -60,7 +60,7 @@ func (s *study) recorded() (*record, error) {
 	s.recordPlan(r)
 	f := s.fullFit
 	r.Reproduction = recReproduction{
-		Library: libraryVersion(), Go: runtime.Version(), Arch: runtime.GOARCH, Seed: s.seed, Draws: s.outlying.draws,
+		Library: subsume.Version, Go: runtime.Version(), Arch: runtime.GOARCH, Seed: s.seed, Draws: s.outlying.draws,
 		RankTolerance: f.Tolerance, SmallestKept: f.SmallestKept, LargestAside: f.LargestAside,
 		Fitting: "orthogonal factorization, no iterations; the check of equal spread is iterated to a checked maximum",
 	}
@@ -200,31 +200,4 @@ func (s *study) recordPlan(r *record) {
 	if q := s.planned; q != nil {
 		r.Plan = &recPlan{q.difference, q.sd, q.alpha, q.here.Noncentrality, q.here.Power(q.alpha), q.wanted, q.detectable, q.each}
 	}
-}
-
-// libraryVersion is the version of the library that the program was built with.
-func libraryVersion() string {
-	const module = "subsume.example"
-	info, ok := debug.ReadBuildInfo()
-	if !ok {
-		return "unknown"
-	}
-	if info.Main.Path == module {
-		return version(info.Main.Version)
-	}
-	for _, d := range info.Deps {
-		if d.Path == module {
-			return version(d.Version)
-		}
-	}
-	return "unknown"
-}
-
-// version is a released version, or "development": a build inside the
-// repository, whose stamp would change with every commit.
-func version(v string) string {
-	if v == "" || v == "(devel)" || len(v) > len("v000.000.000") {
-		return "development"
-	}
-	return v
 }

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"math/rand/v2"
 
 	"subsume.example/glm"
 	"subsume.example/lrt"
@@ -60,6 +61,15 @@ func (s *study) spreadModel() lrt.Model[rowsOf] {
 			}
 		},
 		Start: func(rowsOf) []float64 { return s.spreadStart() },
+		Simulate: func(d rowsOf, theta []float64, src rand.Source) (rowsOf, error) {
+			rng := rand.New(src)
+			drawn := d
+			drawn.y = make([]float64, len(d.y))
+			for i := range drawn.y {
+				drawn.y[i] = fitted(d, theta, i) + theta[k+c+int(d.group[i])]*rng.NormFloat64()
+			}
+			return drawn, nil
+		},
 	}
 }
 
@@ -78,6 +88,9 @@ func (s *study) spreadStart() []float64 {
 	}
 	return theta
 }
+
+// spreadDraws is the largest number of simulated sets for the check of spread.
+const spreadDraws = 499
 
 // mostSpreads is the largest number of groups with a standard deviation each.
 const mostSpreads = 20
@@ -126,7 +139,12 @@ func (s *study) equalSpread(ctx context.Context, data *glm.Data) (lrt.Result, []
 	if err != nil {
 		return lrt.Result{}, nil, err
 	}
-	r, err := lrt.Comparison{Name: "equal spread", Restricted: one, Full: own}.Run(ctx, s.settings())
+	settings := s.settings()
+	if draws := min(s.draws, spreadDraws, maxWork/(len(d.y)*40*len(groups))); draws >= fewestDraw {
+		// The law of λ depends on no mean, slope or common standard deviation: the simulated p is exact.
+		settings.References = []lrt.Reference{lrt.Bootstrap{Draws: draws, Pivotal: true}}
+	}
+	r, err := lrt.Comparison{Name: "equal spread", Restricted: one, Full: own}.Run(ctx, settings)
 	if err != nil {
 		if errors.Is(err, lrt.ErrUnbounded) {
 			err = errors.New("a group does not vary about its mean")
