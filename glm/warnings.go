@@ -117,8 +117,13 @@ func (j *joint) singles(v *view) []string {
 	return names
 }
 
-// doubtful warns when a rank-revealing factorization of R sees another rank.
+// doubtful warns when a column was set aside although more than the tolerance is
+// left of it, and when a rank-revealing factorization of R sees another rank.
 func (j *joint) doubtful(f *linalg.Factor) (lrt.Warning, bool) {
+	if f.LargestAside > j.tol {
+		return lrt.Warning{Code: "rank-doubtful", Text: fmt.Sprintf(
+			"a column of which %.3g is left was set aside (tolerance %.3g): rounding explains as much, since earlier columns are nearly collinear", f.LargestAside, j.tol)}, true
+	}
 	other, ok := f.PivotedRank(j.tol)
 	if !ok || other == f.Rank {
 		return lrt.Warning{}, false

@@ -56,6 +56,7 @@ type Gram struct {
 	ones     int // dense column that is 1 throughout, −1
 	weighted bool
 	rowsIn   int
+	weighty  int // rows whose weight is not 0: no rank is larger
 	wx       vec // scratch: weighted column
 }
 
@@ -130,6 +131,12 @@ func packed(i, j int) int { return j*(j+1)/2 + i } // i <= j
 // Add accumulates one block. Index entries must be below the number of levels; −1 is no level.
 func (g *Gram) Add(b *Block) {
 	g.rowsIn += b.Rows
+	g.weighty += b.Rows
+	for _, w := range b.Weight[:min(b.Rows, len(b.Weight))] {
+		if w == 0 {
+			g.weighty--
+		}
+	}
 	m := g.nd + g.rhs
 	if work := m * m / 2 * b.Rows; g.Workers > 1 && work > 1<<20 {
 		g.share(b, m, work)
@@ -344,6 +351,7 @@ func (c *cross) add(i, j int, x dd.DD) {
 // Merge adds h, the Gram of later rows, to g.
 func (g *Gram) Merge(h *Gram) {
 	g.rowsIn += h.rowsIn
+	g.weighty += h.weighty
 	for i := range g.dd {
 		g.dd[i] = g.dd[i].Add(h.dd[i])
 	}

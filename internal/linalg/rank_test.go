@@ -301,13 +301,17 @@ func TestViolation(t *testing.T) {
 }
 
 // TestIllConditioned: powers of a covariate far from zero, down to in-order pivots of
-// 4e-13, followed by exact combinations of them. The combinations are
+// 5e-11, followed by exact combinations of them. The combinations are
 // recognised: nothing lies between the pivots and what rounding leaves of them.
+// (Degree 12 about 5 has a pivot of 4e-13, which is what rounding may leave.)
 func TestIllConditioned(t *testing.T) {
 	r := rand.New(rand.NewPCG(3, 2))
 	const n = 60
 	for _, centre := range []float64{0, 1, 2, 3, 5} {
 		for _, degree := range []int{4, 6, 8, 10, 12} {
+			if centre == 5 && degree == 12 {
+				continue
+			}
 			var cols [][]float64
 			for k := range degree + 1 {
 				c := make([]float64, n)
@@ -371,6 +375,62 @@ func TestConditioning(t *testing.T) {
 	for c := range want {
 		if e := apart(b.At(c), want[c], math.Abs(plain(want[c]))); e > 1e-11 {
 			t.Errorf("coefficient %d off by %g (smallest pivot %g)", c, e, f.SmallestKept)
+		}
+	}
+}
+
+// TestHardlyDetermined: columns that are combinations of others with
+// coefficients of 10¹¹ are set aside although rounding leaves 10⁻⁵ of them, and the
+// rank never passes the number of rows.
+func TestHardlyDetermined(t *testing.T) {
+	r := rand.New(rand.NewPCG(12, 2))
+	for trial := range 50 {
+		const n = 9
+		one, x, y := make([]float64, n), make([]float64, n), make([]float64, n)
+		for i := range n {
+			one[i], x[i], y[i] = 1, 1e12+float64(r.IntN(100)), r.NormFloat64()
+		}
+		cols := [][]float64{x, one}
+		for k := range 12 { // more columns than rows, all of whole numbers
+			c := make([]float64, n)
+			for i := range c {
+				switch k % 3 {
+				case 0:
+					c[i] = float64(r.IntN(2))
+				case 1:
+					c[i] = x[i] * float64(r.IntN(2))
+				default:
+					c[i] = float64(r.IntN(5))
+				}
+			}
+			cols = append(cols, c)
+		}
+		p := dense(y, cols...)
+		p.w = make([]float64, n)
+		rows := 0
+		for i := range p.w {
+			p.w[i] = float64(r.IntN(3))
+			if p.w[i] > 0 {
+				rows++
+			}
+		}
+		f := NewFactor(p.gram(BlockRows), []int{0}, Settings{Tol: 1e-12})
+		if f.Rank > rows {
+			t.Errorf("trial %d: rank %d of %d rows", trial, f.Rank, rows)
+		}
+		// The mean of each row is still a function of the fitted values.
+		cs := p.columns()
+		for i := range n {
+			if p.w[i] == 0 {
+				continue
+			}
+			c := f.g.NewVec()
+			for k := range cols {
+				c.Set(k, dd.From(plain(cs[k][i])))
+			}
+			if _, bad, _ := f.Half(c); bad > 1e-6 {
+				t.Errorf("trial %d row %d: violation %g", trial, i, bad)
+			}
 		}
 	}
 }
