@@ -45,7 +45,7 @@ func (j *joint) pullback(m *Model, ws []weight) (linalg.Vec, dd.DD) {
 		case b.dense():
 			add(at+w.column, w.coef.Scale(-j.exp[j.denseColumn(g)+w.column]))
 		default:
-			add(at+w.column, w.coef)
+			add(at+w.column, w.coef.Scale(-j.scales[g]))
 		}
 	}
 	if carried.Hi == 0 || !j.shifted {
@@ -163,6 +163,15 @@ func (j *joint) mappable(m *Model, f *linalg.Factor) bool {
 		}
 	}
 	return true
+}
+
+// fromBasis returns x·2^exp + shift, ±Inf where that leaves the range.
+func fromBasis(x dd.DD, exp int, shift float64) float64 {
+	v := x.Scale(exp).AddF(shift).Float64()
+	if math.IsNaN(v) {
+		return math.Ldexp(x.Float64(), exp) + shift
+	}
+	return v
 }
 
 func ldexp(x dd.DD, k int) float64 { return math.Ldexp(x.Float64(), k) }

@@ -21,13 +21,15 @@ func (f *filler) finish(choose bool) error {
 			continue
 		}
 		if i := badValue(f.block.VHi[k][:n]); i >= 0 {
-			return f.notFinite(-1, i)
+			return f.notFiniteValue(k, i)
 		}
 	}
 	maxY := f.maxY
-	for _, y := range f.block.Hi[f.yc][:n] {
-		if y = math.Abs(y); y > maxY {
-			maxY = y
+	for _, col := range f.block.Hi[f.yc:] { // an offset may be larger than the response
+		for _, y := range col[:n] {
+			if y = math.Abs(y); y > maxY {
+				maxY = y
+			}
 		}
 	}
 	f.maxY = maxY
@@ -35,6 +37,7 @@ func (f *filler) finish(choose bool) error {
 	f.rows += n
 	if f.block.Weight == nil {
 		f.n += float64(n)
+		f.sumW += float64(n)
 	} else if err := f.weigh(); err != nil {
 		return err
 	}
@@ -52,7 +55,26 @@ func (f *filler) finish(choose bool) error {
 		}
 		f.toBasis(c, shift, j.exp[k])
 	}
+	f.rescaleValues()
 	return nil
+}
+
+// rescaleValues brings the values of index groups to their scale.
+func (f *filler) rescaleValues() {
+	if f.j.scales == nil {
+		return
+	}
+	idx := 0
+	for g, b := range f.j.cols {
+		if b.dense() {
+			continue
+		}
+		if e := f.j.scales[g]; e != 0 {
+			rescale(f.block.VHi[idx][:f.block.Rows], e)
+			rescale(f.block.VLo[idx][:f.block.Rows], e)
+		}
+		idx++
+	}
 }
 
 // badValue returns the place of a value that is no number, −1 for none.
@@ -105,20 +127,22 @@ func (f *filler) toBasis(c int, shift float64, exp int) {
 	if exp == 0 {
 		return
 	}
-	for _, x := range [][]float64{hi, f.block.Lo[c]} {
-		if x == nil {
-			continue
-		}
-		x = x[:n]
-		if scale := math.Ldexp(1, -exp); exp > -1000 && exp < 1000 {
-			for i := range x {
-				x[i] *= scale
-			}
-			continue
-		}
+	rescale(hi, exp)
+	if f.block.Lo[c] != nil {
+		rescale(f.block.Lo[c][:n], exp)
+	}
+}
+
+// rescale divides by 2^exp.
+func rescale(x []float64, exp int) {
+	if scale := math.Ldexp(1, -exp); exp > -1000 && exp < 1000 {
 		for i := range x {
-			x[i] = math.Ldexp(x[i], -exp)
+			x[i] *= scale
 		}
+		return
+	}
+	for i := range x {
+		x[i] = math.Ldexp(x[i], -exp)
 	}
 }
 
@@ -126,8 +150,6 @@ func (f *filler) toBasis(c int, shift float64, exp int) {
 func (f *filler) notFinite(c, i int) error {
 	e := &ColumnError{Row: f.start + i, Err: ErrNotFinite}
 	switch {
-	case c < 0:
-		e.Column = "covariate of a product"
 	case c == f.yc:
 		e.Column = f.j.response
 	case c > f.yc:
@@ -139,8 +161,29 @@ func (f *filler) notFinite(c, i int) error {
 			}
 		}
 	}
-	if c >= 0 && math.IsNaN(f.block.Hi[c][i]) {
+	if math.IsNaN(f.block.Hi[c][i]) {
 		e.Err = errMissingRow
+	}
+	return e
+}
+
+// notFiniteValue says which covariate of a product holds no number.
+func (f *filler) notFiniteValue(idx, i int) error {
+	e := &ColumnError{Row: f.start + i, Err: ErrNotFinite}
+	if math.IsNaN(f.block.VHi[idx][i]) {
+		e.Err = errMissingRow
+	}
+	for _, b := range f.j.cols {
+		if b.dense() {
+			continue
+		}
+		if idx == 0 {
+			if e.Column = b.name; len(b.numeric) == 1 {
+				e.Column = b.numeric[0]
+			}
+			break
+		}
+		idx--
 	}
 	return e
 }
@@ -149,16 +192,21 @@ func (f *filler) weigh() error {
 	for i, w := range f.block.Weight[:f.block.Rows] {
 		bad := ""
 		switch {
-		case math.IsNaN(w) || math.IsInf(w, 0):
+		case math.IsNaN(w):
 			return &ColumnError{Column: f.j.opt.Weights.Field, Row: f.start + i, Err: errMissingRow}
 		case w < 0:
 			bad = "negative"
+		case w > 0x1p53 && f.j.opt.Weights.Kind == Frequency:
+			bad = "a frequency must be at most 2^53"
+		case w > 0x1p400 || w < 0x1p-400 && w > 0:
+			bad = "outside 2^-400 to 2^400: multiply all weights by one power of two"
 		case f.j.opt.Weights.Kind == Frequency && w != math.Trunc(w):
 			bad = "a frequency must be a whole number"
 		}
 		if bad != "" {
 			return &ColumnError{Column: f.j.opt.Weights.Field, Row: f.start + i, Text: fmt.Sprint(w), Err: fmt.Errorf("%w: %s", ErrWeight, bad)}
 		}
+		f.sumW += w
 		switch {
 		case w == 0:
 			f.zero++

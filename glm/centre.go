@@ -11,18 +11,57 @@ import (
 func (f *filler) chooseBasis() {
 	j, n := f.j, f.block.Rows
 	j.shift, j.exp = append(j.shift[:0], make([]float64, f.yc+1)...), append(j.exp[:0], make([]int, f.yc+1)...)
+	idx := 0
 	for g, b := range j.cols {
 		switch c := f.first[g]; {
-		case !b.dense() || b.Key == "constant":
+		case !b.dense():
+			if v := f.block.VHi[idx]; v != nil {
+				f.chooseScale(g, v[:n])
+			}
+			idx++
+		case b.Key == "constant":
 		case b.powers != nil:
 			f.choosePowers(g)
 		default:
 			for k := range b.Names {
-				j.shift[c+k], j.exp[c+k] = j.centre(f.block.Hi[c+k][:n])
+				j.shift[c+k], j.exp[c+k] = j.centre(f.weighty(f.block.Hi[c+k][:n]))
 			}
 		}
 	}
-	j.shift[f.yc], j.exp[f.yc] = j.centre(f.block.Hi[f.yc][:n])
+	j.shift[f.yc], j.exp[f.yc] = j.centre(f.weighty(f.block.Hi[f.yc][:n]))
+	for _, offset := range f.block.Hi[f.yc+1:] {
+		lower, upper := extremes(f.weighty(offset[:n]))
+		if e := reach(lower, upper, 0); e > j.exp[f.yc] && (e >= 64 || j.exp[f.yc] <= -64) {
+			j.exp[f.yc] = e
+		}
+	}
+}
+
+// chooseScale sets the scale of the values of an index group.
+func (f *filler) chooseScale(g int, x []float64) {
+	lower, upper := extremes(f.weighty(x))
+	e := reach(lower, upper, 0)
+	if e > -64 && e < 64 {
+		return
+	}
+	if f.j.scales == nil {
+		f.j.scales = make(map[int]int)
+	}
+	f.j.scales[g] = e
+}
+
+// weighty returns the values in rows of the first block whose weight is not 0; all where none is.
+func (f *filler) weighty(x []float64) []float64 {
+	if f.block.Weight == nil || f.zero == 0 || f.zero == len(x) {
+		return x
+	}
+	var some []float64
+	for i, w := range f.block.Weight[:len(x)] {
+		if w != 0 {
+			some = append(some, x[i])
+		}
+	}
+	return some
 }
 
 // centre returns a shift and a scale for a column of plain values.
@@ -66,7 +105,7 @@ func (f *filler) choosePowers(g int) {
 	j, n, c := f.j, f.block.Rows, f.first[g]
 	q := &powers{field: j.cols[g].powers.field, degree: j.cols[g].powers.degree}
 	x := f.block.Hi[c][:n]
-	lower, upper := extremes(x)
+	lower, upper := extremes(f.weighty(x))
 	if j.shifted {
 		q.centre = lower/2 + upper/2
 	}

@@ -364,6 +364,11 @@ func largest(zs [][]float64) float64 {
 func (j *joint) askedColumns(co *linalg.Coordinates, g int, b *bound) [][]float64 {
 	zs := co.Columns(g)
 	if !b.dense() {
+		if e := j.scales[g]; e != 0 {
+			for _, z := range zs {
+				rescale(z, -e)
+			}
+		}
 		return zs
 	}
 	if p := j.basis.powers[g]; p != nil {

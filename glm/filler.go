@@ -167,7 +167,7 @@ func (f *filler) fill(w Window, g, at, end int) error {
 		return nil
 	}
 	if err := b.Fill(w, hi, lo); err != nil {
-		return f.blame(b, err)
+		return b.blame(err)
 	}
 	return nil
 }
@@ -176,7 +176,7 @@ func (f *filler) fill(w Window, g, at, end int) error {
 func (f *filler) index(w Window, b *bound, idx, at, end int) error {
 	to := f.block.Index[idx][at:end]
 	if err := b.Index(w, to); err != nil {
-		return f.blame(b, err)
+		return b.blame(err)
 	}
 	for i, l := range to {
 		if int(l) >= len(b.Names) || l < -1 {
@@ -187,17 +187,9 @@ func (f *filler) index(w Window, b *bound, idx, at, end int) error {
 		return nil
 	}
 	if err := b.Value(w, f.block.VHi[idx][at:end], f.block.VLo[idx][at:end]); err != nil {
-		return f.blame(b, err)
+		return b.blame(err)
 	}
 	return nil
-}
-
-func (f *filler) blame(b *bound, err error) error {
-	switch err.(type) {
-	case *ColumnError, *TermError:
-		return err
-	}
-	return &TermError{Term: b.name, Err: err}
 }
 
 // cut returns rows from to to of a window.

@@ -168,10 +168,18 @@ func (f *Fit) summarize() error {
 	if f.f.Eliminated() {
 		f.followTerms()
 	}
+	var beyond []string
 	for t, b := range f.Model.cols {
 		for i := range b.Names {
-			f.Coefficients = append(f.Coefficients, f.coefficient(t, b.shown(i)))
+			c := f.coefficient(t, b.shown(i))
+			if v := c.Estimate; math.IsNaN(v) || math.IsInf(v, 0) {
+				beyond = append(beyond, c.Name)
+			}
+			f.Coefficients = append(f.Coefficients, c)
 		}
+	}
+	if len(beyond) > 0 {
+		f.Warnings = append(f.Warnings, lrt.Warning{Code: "coefficient-range", Text: "coefficients outside the floating-point range in the units of their fields: " + list(beyond)})
 	}
 	if len(f.Coefficients) > maxReported && f.f.Rank > 0 {
 		f.Warnings = append(f.Warnings, lrt.Warning{Code: "standard-errors-on-request", Text: fmt.Sprintf(
@@ -261,7 +269,9 @@ func (r *reading) estimate(ws []weight, se bool) (Estimate, float64, int) {
 			x = x.Add(v.Mul(f.v.beta.At(i)))
 		}
 	}
-	e.Value = f.j.asked(x, carried).Float64()
+	if e.Value = f.j.asked(x, carried).Float64(); math.IsNaN(e.Value) {
+		e.Value = math.Ldexp(x.Float64(), f.j.yExp()) + carried.Float64()*f.j.yShift()
+	}
 	if math.IsNaN(e.SE) {
 		return e, bad, worst
 	}

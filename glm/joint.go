@@ -36,6 +36,7 @@ type basis struct {
 	shift   []float64 // by dense column; the response last
 	exp     []int
 	powers  map[int]*powers // by group: the conditioned basis of a polynomial
+	scales  map[int]int     // by index group: exponent of its values, where far from 0
 }
 
 // tally counts the rows.
@@ -44,7 +45,8 @@ type tally struct {
 	n       float64 // observations: rows, Σw, or rows with w > 0
 	zero    int     // rows of weight 0
 	logW    dd.DD   // Σ log w of precision weights
-	maxY    float64 // largest |y|
+	maxY    float64 // largest |y| and |offset|
+	sumW    float64 // Σ w, rows without weights
 	decimal bool    // the response has digits beyond float64
 }
 

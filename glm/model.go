@@ -150,12 +150,8 @@ func (m *Model) With(ctx context.Context, terms ...Term) (*Model, error) {
 		if t == nil {
 			return nil, &TermError{Term: fmt.Sprintf("number %d", i+1), Err: fmt.Errorf("%w: nil", ErrTerm)}
 		}
-		c, err := t.Bind(ctx, m.src)
+		b, err := bind(ctx, t, m.src)
 		if err != nil {
-			return nil, err
-		}
-		b := &bound{name: t.Name(), Columns: c}
-		if err := b.check(); err != nil {
 			return nil, err
 		}
 		if w.find(b) < 0 {
@@ -165,7 +161,48 @@ func (m *Model) With(ctx context.Context, terms ...Term) (*Model, error) {
 	return &w, nil
 }
 
-// Without returns the model without the terms of the given names, which it must have.
+// bind makes the columns of a term for a source.
+func bind(ctx context.Context, t Term, src Source) (*bound, error) {
+	c, err := t.Bind(ctx, src)
+	b := &bound{name: t.Name(), Columns: c}
+	if err != nil {
+		if ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
+		return nil, b.blame(err)
+	}
+	if err := b.check(); err != nil {
+		return nil, err
+	}
+	f, ok := t.(Fielder)
+	if !ok || b.fields != nil {
+		return b, nil
+	}
+	// A user's term that says what it reads.
+	b.fields = append([]string{}, f.Fields()...)
+	for _, name := range b.fields {
+		_, field, err := findField(src, name)
+		if err != nil {
+			return nil, err
+		}
+		if field.Numeric() {
+			b.numeric = append(b.numeric, name)
+		}
+	}
+	return b, nil
+}
+
+// blame names the term in an error that names no place.
+func (b *bound) blame(err error) error {
+	switch err.(type) {
+	case *ColumnError, *TermError:
+		return err
+	}
+	return &TermError{Term: b.name, Err: err}
+}
+
+// Without returns the model without the terms of the given names, which it must
+// have, each once: where two terms share a name, Normal makes the smaller model.
 func (m *Model) Without(names ...string) (*Model, error) {
 	w := *m
 	w.joint, w.eqs = nil, nil
@@ -174,9 +211,13 @@ func (m *Model) Without(names ...string) (*Model, error) {
 	for _, b := range m.cols {
 		drop := false
 		for _, n := range names {
-			if b.name == n {
-				drop, gone[n] = true, true
+			if b.name != n {
+				continue
 			}
+			if gone[n] && !drop {
+				return nil, &TermError{Term: n, Err: fmt.Errorf("%w: the model has two terms of this name; name the terms of the smaller model to Normal", ErrTerm)}
+			}
+			drop, gone[n] = true, true
 		}
 		if !drop {
 			w.cols = append(w.cols, b)

@@ -108,7 +108,7 @@ func (j *joint) forward(m *Model, gamma linalg.Vec) linalg.Vec {
 			}
 		default:
 			for k := range b.Names {
-				out.Set(at+k, gamma.At(at+k))
+				out.Set(at+k, gamma.At(at+k).Scale(-j.scales[g]))
 			}
 		}
 	}

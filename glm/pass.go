@@ -241,5 +241,6 @@ func (t *tally) merge(u tally) {
 	t.zero += u.zero
 	t.logW = t.logW.Add(u.logW)
 	t.maxY = math.Max(t.maxY, u.maxY)
+	t.sumW += u.sumW
 	t.decimal = t.decimal || u.decimal
 }

@@ -114,10 +114,10 @@ func (f *Fit) row(r *rowReader, i int) RowFit {
 	b := &r.fill.block
 	fit, h, _ := r.value(i)
 	y := r.dense(r.fill.yc, i)
-	e, shift := f.j.yExp(), dd.From(f.j.yShift())
+	e, shift := f.j.yExp(), f.j.yShift()
 	res := y.Sub(fit)
 	out := RowFit{Row: r.fill.start + i, Weight: 1,
-		Response: y.Scale(e).Add(shift).Float64(), Fitted: fit.Scale(e).Add(shift).Float64(), Residual: res.Scale(e).Float64()}
+		Response: fromBasis(y, e, shift), Fitted: fromBasis(fit, e, shift), Residual: fromBasis(res, e, 0)}
 	if b.Weight != nil {
 		out.Weight = b.Weight[i]
 	}
@@ -222,7 +222,7 @@ func (f *Fit) Predict(ctx context.Context, rows Source) ([]Prediction, []lrt.War
 func (f *Fit) predict(r *rowReader, i int, p *Prediction) {
 	fit, h, bad := r.value(i)
 	e := f.j.yExp()
-	p.Value = fit.Scale(e).Add(dd.From(f.j.yShift())).Float64()
+	p.Value = fromBasis(fit, e, f.j.yShift())
 	p.Estimable = bad <= estimable
 	if !p.Estimable {
 		n := math.NaN()

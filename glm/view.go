@@ -125,7 +125,7 @@ func (j *joint) nilBelow() float64 {
 	}
 	y := math.Ldexp(j.maxY, -j.yExp()) * unit
 	q := float64(j.factor.Rank)
-	return math.Max(float64(j.rows)*y*y, (16+4*q)*0x1p-104*j.gram.RHS(0, 0).Float64())
+	return math.Max(j.sumW*y*y, (16+4*q)*0x1p-104*j.gram.RHS(0, 0).Float64())
 }
 
 func (j *joint) yExp() int { return j.exp[len(j.exp)-1] }
