@@ -57,7 +57,8 @@
 //	a <= 1000, x <= a                    even continued fraction of γ (DLMF 8.9.1)        under 40 levels
 //	a <= 1000, a < x < 2.5               complement of the series in double-double        fraction is slow
 //	a <= 1000, x > a                     even continued fraction of Γ (DLMF 8.9.2)        under 100 levels
-//	a > 1000, |η| <= 1.16                uniform expansion (Temme 1979; DLMF 8.12.7)      same cost for every a
+//	a >= 60, |η| <= 0.5, or
+//	a >= 1000, |η| <= 1.16               uniform expansion (Temme 1979; DLMF 8.12.7)      same cost for every a
 //
 //	beta law, X <= a/(a+b) by exchange
 //	b whole <= 16, 2a whole              finite sum (complement of DLMF 8.17.24)                        no logarithm

@@ -149,7 +149,8 @@ func quickGammaKernel(a float64, x dd.DD) (Scaled, bool) {
 // quickGammaTail is GammaTail on the quick path:
 //
 //	2a <= 28 whole, x > 0.6a  upper: finite sum
-//	a > 1000, |η| <= 1.16      the tail on the side of x: uniform expansion (temme.go)
+//	a >= 60, |η| <= 0.5, or a >= 1000, |η| <= 1.16
+//	                  the tail on the side of x: uniform expansion (temme.go)
 //	x <= (a+1)/4      lower: series, its first terms in double-double
 //	x <= a            lower: continued fraction, the limit of the beta law's (DLMF 8.9.1, even part)
 //	a < x < 2.5       upper: complement of the series, more terms in double-double
@@ -162,7 +163,7 @@ func quickGammaTail(a float64, x dd.DD) (t Scaled, upper, ok bool) {
 	if k := 2 * a; k <= finiteGammaMax && k == math.Floor(k) && x0 > 0.6*a && x0 < 650 {
 		return gammaFinite(int(k), x), true, true
 	}
-	if a > quickMax && x0 > 0.2*a {
+	if a >= temmeMin && x0 > 0.2*a {
 		if t, upper, ok = temmeTail(a, x); ok {
 			return t, upper, true
 		}

@@ -3,6 +3,7 @@ package special
 import (
 	"math"
 	"math/rand/v2"
+	"os"
 	"testing"
 
 	"subsume.example/internal/dd"
@@ -10,6 +11,14 @@ import (
 
 func logUniform(r *rand.Rand, lo, hi float64) float64 {
 	return math.Exp(math.Log(lo) + r.Float64()*math.Log(hi/lo))
+}
+
+// sampleSize is 30 000, or 10^6 with SUBSUME_LONG=1.
+func sampleSize() int {
+	if os.Getenv("SUBSUME_LONG") == "1" {
+		return 1000000
+	}
+	return 30000
 }
 
 // shape draws a shape parameter of the quick path, often whole or half.
@@ -35,7 +44,7 @@ func relDiff(a Scaled, aUpper bool, b Scaled, bUpper bool) float64 {
 // how often it answers.
 func TestQuickGamma(t *testing.T) {
 	r := rand.New(rand.NewPCG(1, 9))
-	worst, answered, n := 0.0, 0, 30000
+	worst, answered, n := 0.0, 0, sampleSize()
 	for range n {
 		a := shape(r)
 		if r.IntN(5) == 0 {
@@ -68,7 +77,7 @@ func TestQuickGamma(t *testing.T) {
 // TestQuickBeta does the same for the beta law.
 func TestQuickBeta(t *testing.T) {
 	r := rand.New(rand.NewPCG(2, 9))
-	worst, answered, n := 0.0, 0, 30000
+	worst, answered, n := 0.0, 0, sampleSize()
 	for range n {
 		a, b := shape(r), shape(r)
 		switch r.IntN(4) {
