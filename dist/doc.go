@@ -98,8 +98,8 @@
 // 0.1 and 1e10 to 1e12).
 //
 //	table       value        rows   median  everyday max      max
-//	chi2        tail          900  4.9e-17  4.5e-16       7.3e-16
-//	chi2        log          1800  4.4e-17  6.9e-16       7.3e-16
+//	chi2        tail          900  5.1e-17  3.5e-16       7.3e-16
+//	chi2        log          1800  4.4e-17  3.2e-16       7.3e-16
 //	chi2        density       900  3.4e-17  1.0e-16       1.1e-16
 //	chi2        logdensity    900  3.6e-17  9.5e-17       1.1e-16
 //	chi2        quantile       54  4.3e-17  3.3e-16       4.0e-16
