@@ -6,7 +6,7 @@ import "math"
 type summit struct {
 	u          []float64
 	f          float64
-	slopeAt    []float64 // a while ago, of coordinates running to the end of their range
+	marks      [][]mark // of coordinates running to the end of their range
 	g          []float64
 	info       []float64 // −∂²/∂u∂u' near the summit; nil: never taken
 	taken      float64   // how near, in standard errors
@@ -18,6 +18,9 @@ type summit struct {
 	walls      []int // parameters held back by a wall
 	iterations int
 }
+
+// mark is a log likelihood met at a distance from the start.
+type mark struct{ d, f float64 }
 
 // A step is taken in the largest region where the quadratic model is trusted:
 // the ellipsoid whose half axes are radius standard errors.
@@ -57,7 +60,7 @@ func (r *region) solve(g []float64, radius float64) (length, damp float64) {
 	mu := 1e-3
 	for range 60 {
 		if try(mu) {
-			if length <= radius*1.1 && (length >= radius*0.7 || lo == 0 && mu <= 1e-3) {
+			if length <= radius*1.1 && (length >= radius*0.7 || lo == 0 && mu <= 1e-12 || lo > 0 && hi > 0 && hi < lo*1.01) {
 				break
 			}
 			if length > radius {
@@ -407,18 +410,27 @@ func (p *problem) running(u0 []float64, s *summit, edges bool) bool {
 		case linkAbove, linkBelow:
 			toEdge = s.g[j] < 0 && d < math.Log(edgeRatio)
 			toInfinity = d > 100 && s.g[j] > 0 || !edges && d < -80
-			// Rising towards the end of its range at a slope that stays the same for
-			// seven decades: without end, whatever rounding makes of it further on. (A start
-			// that was merely far off has a slope that fades.)
-			if !edges && d < -6 && s.g[j] < -0.2 {
-				if s.slopeAt == nil {
-					s.slopeAt = make([]float64, len(s.u))
+			// Rising at a rate that stays the same over eleven decades: without end,
+			// whatever rounding makes of it further on. (A start that was merely far
+			// off has a rate that fades.)
+			farOff := 25.0
+			if d < 0 {
+				farOff = 16 // beyond the four decades of a first climb
+			}
+			if d > 6 || d < -6 && !edges {
+				if s.marks == nil {
+					s.marks = make([][]mark, len(s.u))
 				}
+				m := s.marks[j]
 				switch {
-				case s.slopeAt[j] == 0:
-					s.slopeAt[j] = s.g[j]
-				case d < -16 && s.g[j] > 3*s.slopeAt[j] && 3*s.g[j] < s.slopeAt[j]:
-					toInfinity, s.rising = true, true
+				case len(m) == 0, len(m) == 1 && math.Abs(d) > 0.5*(6+farOff):
+					s.marks[j] = append(m, mark{math.Abs(d), s.f})
+				case len(m) == 2 && math.Abs(d) > farOff:
+					early := (m[1].f - m[0].f) / (m[1].d - m[0].d)
+					late := (s.f - m[1].f) / (math.Abs(d) - m[1].d)
+					if late > 0.2 && late < 3*early && early < 3*late {
+						toInfinity, s.rising = true, true
+					}
 				}
 			}
 		case linkBetween:
