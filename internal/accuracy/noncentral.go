@@ -13,12 +13,16 @@ func init() {
 		d := everydayDF(df)
 		return func(p []float64) bool { return d(p) && p[df] >= -1e4 && p[df] <= 1e4 }
 	}
+	ncx2 := func(p []float64) Distribution { return dist.NoncentralChiSquared{K: p[0], Lambda: p[1]} }
+	nct := func(p []float64) Distribution { return dist.NoncentralT{Nu: p[0], Delta: p[1]} }
 	ncf := func(p []float64) Distribution { return dist.NoncentralF{D1: p[0], D2: p[1], Lambda: p[2]} }
 	Tables = append(Tables,
-		Table{File: "ncx2", Params: 2, New: func(p []float64) Distribution { return dist.NoncentralChiSquared{K: p[0], Lambda: p[1]} }, Everyday: everyday(1)},
+		Table{File: "ncx2", Params: 2, New: ncx2, Everyday: everyday(1)},
 		Table{File: "ncf", Params: 3, New: ncf, Everyday: everyday(2)},
-		Table{File: "nct", Params: 2, New: func(p []float64) Distribution { return dist.NoncentralT{Nu: p[0], Delta: p[1]} }, Everyday: everyday(1)},
+		Table{File: "nct", Params: 2, New: nct, Everyday: everyday(1)},
 		Table{File: "ncfpower", Params: 3, New: ncf, Everyday: everyday(2)},
+		Table{File: "ncx2_wide", Params: 2, New: ncx2, Everyday: everyday(1)},
+		Table{File: "ncf_wide", Params: 3, New: ncf, Everyday: everyday(2)},
 	)
 }
 

@@ -33,6 +33,7 @@ type fPath struct {
 	bigA  float64
 	delta float64
 	phi   dd.DD
+	l1    float64 // log((1+ρ)/(1+c))
 	bent  bool
 	n, h  float64
 	eta   float64 // distance of the pole from the path, +Inf if no matter
@@ -52,7 +53,7 @@ func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64) fPath {
 		l1 = dd.Log(r1).Sub(g.logC1)
 		l2 = dd.Log(dd.From(rho)).Sub(g.logC)
 	}
-	p.u, p.e = u.Float64(), e.Float64()
+	p.u, p.e, p.l1 = u.Float64(), e.Float64(), l1.Float64()
 	A := u.Mul(lam2)
 	p.bigA = A.Float64()
 	p.delta = A.AddF(a).Sub(dd.Prod(b, rho)).Float64()
@@ -102,7 +103,20 @@ func bentNodes(b float64) float64 { return math.Sqrt(82*4*b+70*70) * 1.1 }
 // the sign of the upper one, the density of log X and the derivative of the upper tail in λ,
 //
 //	(1/2πi) ∮ e^φ du/(u(u-1)),  (1/2πi) ∮ e^φ b y du/(u(u-y)),  (1/2πi) ∮ e^φ du/(2u).
-type fSums struct{ tail, kernel, slope float64 }
+//
+// For b < smallB lower is the lower tail again in a form that does not cancel: without its
+// factor B(u) = ((1-y)u/(u-y))^b, which is 1 at u = 1, the integrand of the tail gives 0 on a path
+// left of the pole, so
+//
+//	P(F <= x) = -(1/2πi) ∮ e^φ (1 - 1/B(u)) du/(u(u-1)),
+//
+// where the pole is gone and every part is of the size of b, as the tail is.
+type fSums struct{ tail, kernel, slope, lower float64 }
+
+const smallB = 0.5
+
+// small reports whether lower is wanted: never in the far upper tail.
+func (p *fPath) small() bool { return p.b < smallB && (p.e < 0 || p.phi.Hi > -5) }
 
 func (p *fPath) sums() (s fSums) {
 	if p.bent {
@@ -146,6 +160,7 @@ func (p *fPath) circleSums() (s fSums) {
 
 func (p *fPath) bentSums() (s fSums) {
 	r := 1 + p.rho
+	small := p.small()
 	for j := 0.5; j < maxNodes; j++ {
 		tau, w := sinhCosh(j * p.h)
 		q := tau * tau
@@ -154,7 +169,8 @@ func (p *fPath) bentSums() (s fSums) {
 		if !(m <= cut) {
 			break
 		}
-		psi := 2*p.b*atanDefect(tau) + p.delta*zi + (p.a+p.b)*(math.Atan2(zi, 1+zr)-zi)
+		arg := math.Atan2(zi, 1+zr)
+		psi := 2*p.b*atanDefect(tau) + p.delta*zi + (p.a+p.b)*(arg-zi)
 		sp, cp := math.Sincos(psi)
 		f := w * math.Exp(-m)
 		ar, ai := 1+zr, zi
@@ -162,7 +178,17 @@ func (p *fPath) bentSums() (s fSums) {
 		nr, ni := cp-tau*sp, sp+tau*cp
 		br, bi := p.e+p.u*zr, p.u*zi
 		dr, di := ar*br-ai*bi, ar*bi+ai*br
-		s.tail += f * (nr*dr + ni*di) / (dr*dr + di*di)
+		d2 := dr*dr + di*di
+		tr, ti := (nr*dr+ni*di)/d2, (ni*dr-nr*di)/d2
+		s.tail += f * tr
+		if small {
+			// 1 - 1/B = 1 - e^{x+iη}
+			x := p.b * (math.Log1p(q) - p.l1 - math.Log1p(2*zr+zr*zr+zi*zi)/2)
+			eta := p.b * (2*math.Atan(tau) - arg)
+			es, ec := math.Sincos(eta / 2)
+			ex := math.Exp(x)
+			s.lower += f * (tr*(2*ex*es*es-math.Expm1(x)) + ti*ex*2*es*ec)
+		}
 		// Re of e^{iψ}/((1+z)(1+iτ))
 		dr, di = ar-tau*ai, ai+tau*ar
 		s.kernel += f * (cp*dr + sp*di) / (dr*dr + di*di)
@@ -173,6 +199,7 @@ func (p *fPath) bentSums() (s fSums) {
 	s.tail *= c
 	s.kernel *= c * p.b * p.rho
 	s.slope *= c / 2
+	s.lower *= -c
 	return s
 }
 
@@ -184,6 +211,11 @@ func (p *fPath) result() (t special.Scaled, upper bool, kernel, slope special.Sc
 		s.tail = -s.tail
 	}
 	at := func(v float64) special.Scaled { return special.Scaled{L: p.phi, M: dd.From(v)} }
+	if p.small() {
+		if l := at(s.lower); l.DD().Hi < 0.6 {
+			return l, false, at(s.kernel), at(s.slope)
+		}
+	}
 	return at(s.tail + poleTerm(p.eta, p.n, p.phi.Hi)), upper, at(s.kernel), at(s.slope)
 }
 
