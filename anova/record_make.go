@@ -95,7 +95,7 @@ func recordData(d *glm.Data, m *glm.Model) (RecordData, error) {
 	a := d.Account()
 	out := RecordData{Source: baseName(a.Source), RowsRead: a.Read, RowsUsed: a.Used, Dropped: []RecordDrop{}, Emptied: []string{}, ColumnDigests: []RecordDigest{}}
 	for _, drop := range a.Dropped {
-		out.Dropped = append(out.Dropped, RecordDrop{Column: drop.Column, Reason: drop.Reason, Rows: drop.Rows})
+		out.Dropped = append(out.Dropped, RecordDrop{Column: drop.Column, Reason: drop.Reason, Rows: drop.Rows, Lines: drop.Lines})
 	}
 	for _, e := range a.Emptied {
 		out.Emptied = append(out.Emptied, e.Column+"="+e.Level)

@@ -22,10 +22,19 @@ type Drop struct {
 	Column string // the column at fault; "" where the reason is about the row
 	Reason string // "missing", or the reason given to Where
 	Rows   []int  // numbers of the rows in the source, from 0
+	Lines  []int  // their lines in the file; nil where there is none
 }
 
 // EmptiedLevel is a level that went out with its last row.
 type EmptiedLevel struct{ Column, Level string }
+
+// add records row i of d.
+func (drop *Drop) add(d *Data, i int) {
+	drop.Rows = append(drop.Rows, d.Row(i))
+	if d.first > 0 {
+		drop.Lines = append(drop.Lines, d.Line(i))
+	}
+}
 
 // Left returns the number of rows left out.
 func (a Account) Left() int { return a.Read - a.Used }
@@ -92,7 +101,7 @@ func (d *Data) Complete(columns ...string) (*Data, error) {
 		for i := range d.n {
 			if keep[i] && c.isMissing(i) {
 				keep[i] = false
-				drop.Rows = append(drop.Rows, d.Row(i))
+				drop.add(d, i)
 			}
 		}
 		if drop.Rows != nil {
@@ -121,7 +130,7 @@ func (d *Data) Where(reason string, keep func(row int) bool) (*Data, error) {
 	drop := Drop{Reason: reason}
 	for i := range marks {
 		if marks[i] = keep(i); !marks[i] {
-			drop.Rows = append(drop.Rows, d.Row(i))
+			drop.add(d, i)
 		}
 	}
 	if drop.Rows == nil {

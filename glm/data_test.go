@@ -281,7 +281,7 @@ func TestComplete(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	want := Account{Read: 5, Used: 3, Dropped: []Drop{{"y", "missing", []int{1}}, {"g", "missing", []int{2}}}}
+	want := Account{Read: 5, Used: 3, Dropped: []Drop{{"y", "missing", []int{1}, nil}, {"g", "missing", []int{2}, nil}}}
 	if diff := cmp.Diff(want, e.Account()); diff != "" {
 		t.Error(diff)
 	}
@@ -295,7 +295,7 @@ func TestComplete(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	want = Account{Read: 5, Used: 2, Dropped: append(want.Dropped, Drop{"x", "missing", []int{4}}), Emptied: nil}
+	want = Account{Read: 5, Used: 2, Dropped: append(want.Dropped, Drop{"x", "missing", []int{4}, nil}), Emptied: nil}
 	if diff := cmp.Diff(want, f.Account()); diff != "" {
 		t.Error(diff)
 	}

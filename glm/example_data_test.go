@@ -132,15 +132,15 @@ func ExampleData_Complete() {
 	a := c.Account()
 	fmt.Println("read", a.Read, "used", a.Used)
 	for _, drop := range a.Dropped {
-		fmt.Println(drop.Column, drop.Reason, drop.Rows)
+		fmt.Println(drop.Column, drop.Reason, "on lines", drop.Lines)
 	}
 	for _, e := range a.Emptied {
 		fmt.Println("level", e.Level, "of", e.Column, "has no rows left")
 	}
 	// Output:
 	// read 4 used 2
-	// yield missing [1]
-	// plot missing [2]
+	// yield missing on lines [3]
+	// plot missing on lines [4]
 	// level b of plot has no rows left
 }
 
@@ -156,8 +156,8 @@ func ExampleData_Where() {
 		fmt.Println(err)
 		return
 	}
-	fmt.Println(c.Len(), c.Row(1), c.Account().Dropped[0])
-	// Output: 2 2 { scale was being repaired [1]}
+	fmt.Println(c.Len(), c.Row(1), c.Account().Dropped[0].Reason, c.Account().Dropped[0].Rows)
+	// Output: 2 2 scale was being repaired [1]
 }
 
 func ExampleData_With() {

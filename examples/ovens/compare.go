@@ -135,10 +135,9 @@ func (s *study) writeTable(p *page) {
 	p.title("Table")
 	_, body, _ := strings.Cut(s.table.String(), "\n") // without its title
 	p.b.WriteString(body)
+	p.gap()
+	p.b.WriteString(s.table.Effects().Text())
 }
-
-// sumOfSquares is the numerator in the units of the response.
-func sumOfSquares(l lrt.Linear) float64 { return math.Ldexp(l.Numerator, 2*l.Scale) }
 
 // atEqual adds the covariates to a sentence.
 func (s *study) atEqual() string {

@@ -12,9 +12,11 @@ import (
 
 // ways says how the groups compare: each mean, and each pair.
 type ways struct {
-	at    []float64 // where the covariates are held: their means over the rows used
-	means []anova.Group
-	pairs []pairing
+	groupMeans *anova.Groups
+	family     *anova.Family // nil: too many pairs
+	at         []float64     // where the covariates are held: their means over the rows used
+	means      []anova.Group
+	pairs      []pairing
 }
 
 // pairing is the difference of two groups, turned so that it is not negative.
@@ -37,7 +39,7 @@ func (s *study) follow(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	s.means = groups.List()
+	s.groupMeans, s.means = groups, groups.List()
 	for _, c := range s.covariates {
 		for _, h := range groups.At() {
 			if h.Field == c {
@@ -52,6 +54,7 @@ func (s *study) follow(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	s.family = &family
 	for _, l := range family.Lines() {
 		s.pairs = append(s.pairs, s.turned(l))
 	}

@@ -79,7 +79,7 @@ func (j *job) answer(ctx context.Context, out io.Writer) error {
 	if j.record == "" {
 		return nil
 	}
-	return s.saveRecord(j.record, out)
+	return s.saveRecord(ctx, j.record, out)
 }
 
 // outputError is a failure to write, which is no fault of the input.

@@ -10,6 +10,7 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -81,26 +82,43 @@ func TestRecord(t *testing.T) {
 	if bytes.Contains(first, []byte(dir)) {
 		t.Error("the record holds a path")
 	}
-	var r record
+	var r struct {
+		Data struct {
+			Read    int `json:"rows_read"`
+			Used    int `json:"rows_used"`
+			Dropped []struct{ Lines []int }
+			Rows    string `json:"rows_sha256"`
+		}
+		Rows []struct {
+			Name, Hypothesis, Reading string
+			MS, Value, P, LogP        float64
+			DF                        float64 `json:"df"`
+			DFError                   float64 `json:"df_error"`
+			MSError                   float64 `json:"ms_error"`
+			LogLambda                 float64 `json:"log_lambda"`
+			Certified                 bool
+		}
+		Reports  []json.RawMessage
+		Declared struct {
+			Checks []struct{ Name string }
+		}
+	}
 	if err := json.Unmarshal(first, &r); err != nil {
 		t.Fatal(err)
 	}
-	n := r.Numbers
-	if want := n.NumeratorMS / n.DenominatorMS; math.Abs(n.F/want-1) > 1e-13 {
-		t.Errorf("F = %v, mean squares give %v", n.F, want)
+	n := r.Rows[len(r.Rows)-1]
+	if want := n.MS / n.MSError; n.Name != "oven" || !n.Certified || math.Abs(n.Value/want-1) > 1e-13 {
+		t.Errorf("row %+v, mean squares give F = %v", n, want)
 	}
-	if want := float64(r.Data.RowsUsed) * math.Log1p(n.F*n.NumeratorDF/n.DenominatorDF); math.Abs(n.ChiSquared/want-1) > 1e-14 {
-		t.Errorf("−2 log λ = %v, n log(1 + F d1/d2) = %v", n.ChiSquared, want)
+	// λ of the default error pair is (1 + F d1/d2)^(−n/2).
+	if want := -0.5 * float64(r.Data.Used) * math.Log1p(n.Value*n.DF/n.DFError); math.Abs(n.LogLambda/want-1) > 1e-14 {
+		t.Errorf("log λ = %v, want %v", n.LogLambda, want)
 	}
-	if len(r.Data.Dropped) != 1 || len(r.Data.Digest) != 64 || r.Data.RowsRead != 312 || r.Data.RowsUsed != 311 {
+	if d := r.Data; len(d.Dropped) != 1 || !slices.Equal(d.Dropped[0].Lines, []int{89}) || len(d.Rows) != 64 || d.Read != 312 || d.Used != 311 {
 		t.Errorf("data %+v", r.Data)
 	}
-	before, _, _ := strings.Cut(string(first), `"checks"`)
-	if strings.Contains(before, "_reason\"") {
-		t.Errorf("a number before the checks is not finite:\n%s", before)
-	}
-	if last := r.Table[len(r.Table)-1]; last.F != n.F || last.P != n.P || last.SS != n.NumeratorSS {
-		t.Errorf("table %+v and comparison %+v disagree", last, n)
+	if len(r.Reports) != 5 || len(r.Declared.Checks) != 7 {
+		t.Errorf("%d reports, checks %v", len(r.Reports), r.Declared.Checks)
 	}
 }
 
@@ -303,15 +321,14 @@ func TestSpread(t *testing.T) {
 	}
 }
 
-// TestSpreadOf checks the noncentrality of the planned pattern.
-func TestSpreadOf(t *testing.T) {
-	// Equal groups: Σ n (μ − μ̄)² of means ±½ and 0 is n/2.
-	if got := spreadOf([]int{7, 7, 7}, 0, 2); got != 3.5 {
-		t.Errorf("spreadOf = %v, want 3.5", got)
-	}
-	// Two unequal groups: n₁n₂/(n₁+n₂).
-	if got := spreadOf([]int{6, 3}, 0, 1); math.Abs(got-2) > 1e-15 {
-		t.Errorf("spreadOf = %v, want 2", got)
+func TestHardestPair(t *testing.T) {
+	for _, c := range []struct {
+		counts []int
+		a, b   int
+	}{{[]int{5, 5}, 0, 1}, {[]int{9, 3, 8, 4}, 1, 3}, {[]int{3, 3, 3}, 0, 1}, {[]int{1, 100, 90}, 0, 2}} {
+		if a, b := hardestPair(c.counts); a != c.a || b != c.b {
+			t.Errorf("hardestPair(%v) = %d, %d, want %d, %d", c.counts, a, b, c.a, c.b)
+		}
 	}
 }
 

@@ -4,10 +4,8 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
-	"slices"
 
-	"subsume.example/lrt"
+	"subsume.example/anova"
 )
 
 // plan holds what the design could be expected to find, from figures that were
@@ -16,10 +14,11 @@ type plan struct {
 	difference, sd float64
 	alpha, wanted  float64
 	a, b           string // the pair of groups that is hardest to tell apart
-	here           lrt.Plan
-	detectable     float64 // difference found with the wanted power by this design
-	each           int     // rows a group, equal groups, for the wanted power; 0: out of reach
-	powerEach      float64 // reached with them
+	power          anova.Power
+	row            anova.PlannedRow // of the group, in power
+	detectable     float64          // difference found with the wanted power by this design
+	size           anova.Size       // equal groups with the wanted power
+	each           int              // rows a group then; 0: out of reach
 }
 
 // plan works the planning figures, for the least favourable pattern: two
@@ -29,57 +28,63 @@ func (s *study) plan(ctx context.Context) error {
 		return nil
 	}
 	q := &plan{difference: s.difference, sd: s.sd, alpha: 1 - s.level, wanted: s.power}
-	unit := math.Inf(1)
-	for a := range s.groups {
-		for b := range a {
-			if l := spreadOf(s.counts, a, b); l < unit {
-				unit, q.a, q.b = l, s.groups[b], s.groups[a]
-			}
+	a, b := hardestPair(s.counts)
+	q.a, q.b = s.groups[a], s.groups[b]
+	design := anova.Design{Factors: []string{s.group}, SD: s.sd}
+	for i, g := range s.groups {
+		c := anova.DesignCell{Levels: []string{g}, Units: s.counts[i]}
+		switch i {
+		case a:
+			c.Mean = s.difference / 2
+		case b:
+			c.Mean = -s.difference / 2
 		}
+		design.Cells = append(design.Cells, c)
 	}
 	var err error
-	if q.here, err = s.planFor(s.counts, unit); err != nil {
-		return s.explain(err)
+	if q.power, err = design.Power(ctx, q.alpha); err != nil {
+		return err
 	}
-	lambda, err := q.here.Detectable(q.alpha, q.wanted)
+	q.row, _ = q.power.Row(s.group)
+	if q.row.Err != nil {
+		return s.explain(q.row.Err)
+	}
+	least, err := design.Detectable(ctx, s.group, q.alpha, q.wanted)
 	if err != nil {
 		return err
 	}
-	q.detectable = q.sd * math.Sqrt(lambda/unit)
-	size, err := lrt.SizeSearch{
-		Alpha: q.alpha, Power: q.wanted, Step: slices.Repeat([]int{1}, len(s.groups)),
-		Plan: func(n []int) (lrt.Plan, error) { return s.planFor(n, spreadOf(n, 0, 1)) },
-	}.Solve(ctx)
+	q.detectable = least.Scale * s.difference
+	for i := range design.Cells {
+		design.Cells[i].Units = 1
+	}
+	q.size, err = design.SampleSize(ctx, s.group, q.alpha, q.wanted, nil)
 	switch {
 	case err == nil:
-		q.each, q.powerEach = size.N[0], size.Power
-	case !errors.Is(err, lrt.ErrTooSmall):
+		q.each = q.size.N[0]
+	case !errors.Is(err, anova.ErrUnreachable):
 		return err
 	}
 	s.planned = q
 	return nil
 }
 
-// planFor is the plan of the F test with n rows in the groups, for a pattern
-// of the given spread in units of the difference of interest.
-func (s *study) planFor(n []int, spread float64) (lrt.Plan, error) {
-	total := 0
-	for _, v := range n {
-		total += v
-	}
-	ratio := s.difference / s.sd
-	return lrt.PlanF(float64(len(n)-1), float64(total-len(n)-len(s.covariates)), spread*ratio*ratio)
-}
-
-// spreadOf returns Σ n (μ − μ̄)² for means ½ in group a, −½ in group b and 0 elsewhere.
-func spreadOf(counts []int, a, b int) float64 {
-	n := 0
+// hardestPair returns the pair of groups whose difference, all others halfway, has
+// the smallest noncentrality: Σ n (μ − μ̄)² for means ½, −½ and 0.
+func hardestPair(counts []int) (a, b int) {
+	least := -1.0
+	n := 0.0
 	for _, c := range counts {
-		n += c
+		n += float64(c)
 	}
-	na, nb := float64(counts[a]), float64(counts[b])
-	mean := (na - nb) / 2 / float64(n)
-	return (na+nb)/4 - float64(n)*mean*mean
+	for j := range counts {
+		for i := range j {
+			ni, nj := float64(counts[i]), float64(counts[j])
+			if v := (ni+nj)/4 - (ni-nj)*(ni-nj)/(4*n); least < 0 || v < least {
+				least, a, b = v, i, j
+			}
+		}
+	}
+	return a, b
 }
 
 // writePlan says what could be expected before the response was looked at.
@@ -91,14 +96,14 @@ func (s *study) writePlan(p *page) {
 	p.title("Plan")
 	p.text("Stated before the response is looked at: a difference of %s in %s between two groups matters, and %s is the expected standard deviation within groups%s. The pattern hardest to see is two groups that far apart with the others halfway; of these groups, %s and %s.",
 		fig(q.difference, 3), s.response, fig(q.sd, 3), s.atEqual(), q.a, q.b)
-	p.line("")
+	p.gap()
 	t := p.table("lr")
 	t.row("level of the test", percent(q.alpha))
-	t.row("noncentrality λ of that pattern in this design", fig(q.here.Noncentrality, 4))
-	t.row("power of the exact F test in this design", percent(q.here.Power(q.alpha)))
+	t.row("noncentrality λ of that pattern in this design", fig(q.row.Plan.Noncentrality, 4))
+	t.row("power of the exact F test in this design", percent(q.row.Power))
 	t.row(fmt.Sprintf("difference found with power %s in this design", percent(q.wanted)), fig(q.detectable, 4))
 	if q.each > 0 {
-		t.row(fmt.Sprintf("rows a group for power %s, equal groups (power %s)", percent(q.wanted), percent(q.powerEach)), fmt.Sprint(q.each))
+		t.row(fmt.Sprintf("rows a group for power %s, equal groups (power %s)", percent(q.wanted), percent(q.size.Power)), fmt.Sprint(q.each))
 	}
 	t.end()
 }

@@ -16,7 +16,6 @@ import (
 // study is the work on one job, step by step.
 type study struct {
 	*job
-	all    *glm.Data // as read
 	data   *glm.Data // the rows complete in every column used
 	groups []string
 	counts []int
@@ -56,11 +55,11 @@ func (s *study) read(ctx context.Context) error {
 	for _, c := range s.covariates {
 		o.Kinds[c] = glm.Numeric
 	}
-	var err error
-	if s.all, err = glm.ReadCSV(ctx, in, o); err != nil {
+	all, err := glm.ReadCSV(ctx, in, o)
+	if err != nil {
 		return s.hint(err)
 	}
-	if s.data, err = s.all.Complete(o.Only...); err != nil {
+	if s.data, err = all.Complete(o.Only...); err != nil {
 		return err
 	}
 	// Whole numbers may name groups: they become levels, in ascending order.
@@ -97,7 +96,7 @@ func (s *study) writeData(p *page) {
 	a := s.data.Account()
 	p.line("%s: %s read, %s used, %s left out.", a.Source, rows(a.Read), rows(a.Used), rows(a.Left()))
 	for _, d := range a.Dropped {
-		p.line("  left out, %s %s: %s", d.Column, d.Reason, s.linesOf(d.Rows))
+		p.line("  left out, %s %s: %s", d.Column, d.Reason, linesOf(d.Lines))
 	}
 	for _, e := range a.Emptied {
 		p.line("  %s %q has no row left and is not compared", e.Column, e.Level)
@@ -120,15 +119,15 @@ func (s *study) writeData(p *page) {
 }
 
 // linesOf names rows by their lines in the file, the first few of them.
-func (s *study) linesOf(dropped []int) string {
+func linesOf(dropped []int) string {
 	const most = 8
 	var names []string
-	for i, r := range dropped {
+	for i, line := range dropped {
 		if i == most {
 			names = append(names, fmt.Sprintf("and %d more", len(dropped)-most))
 			break
 		}
-		names = append(names, fmt.Sprint(s.all.Line(r)))
+		names = append(names, fmt.Sprint(line))
 	}
 	word := "line "
 	if len(dropped) > 1 {
