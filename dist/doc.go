@@ -139,20 +139,28 @@
 //	ncx2        density      1620  7.0e-17  5.5e-16       6.6e-16
 //	ncx2        logdensity   1620  3.9e-17  1.9e-16       1.9e-16
 //	ncx2        quantile       53  3.7e-17  1.1e-16       2.0e-15
-//	ncf         tail         1620  5.7e-17  8.6e-16       9.8e-16
-//	ncf         log          3240  4.8e-17  8.0e-16       1.1e-15
+//	ncf         tail         1620  5.7e-17  8.6e-16       8.6e-16
+//	ncf         log          3240  4.8e-17  7.4e-16       7.4e-16
 //	ncf         density      1620  5.7e-17  8.0e-16       8.0e-16
 //	ncf         logdensity   1620  4.0e-17  2.4e-14       2.4e-14
-//	ncf         quantile       54  4.8e-17  2.5e-16       3.7e-16
+//	ncf         quantile       54  4.7e-17  2.5e-16       3.7e-16
 //	nct         tail          360  1.3e-16  7.9e-16       7.9e-16
-//	nct         log           720  7.5e-17  1.0e-15       1.0e-15
+//	nct         log           720  7.6e-17  1.0e-15       1.0e-15
 //	nct         density       360  1.7e-16  1.5e-15       1.5e-15
 //	nct         logdensity    360  5.6e-17  8.0e-16       8.0e-16
 //	ncfpower    tail          300  5.2e-17  6.3e-16       6.3e-16
 //	ncfpower    log           600  4.5e-17  8.3e-16       8.3e-16
 //	ncfpower    density       300  4.1e-17  6.5e-16       6.5e-16
 //	ncfpower    logdensity    300  3.7e-17  1.2e-15       1.2e-15
-//	ncinv       lambda        130  4.6e-17  7.4e-16       7.4e-16
+//	ncx2_wide   tail           60  1.2e-16  -             5.3e-16
+//	ncx2_wide   log           120  6.5e-17  -             5.3e-16
+//	ncx2_wide   density        60  9.2e-17  -             3.7e-16
+//	ncx2_wide   logdensity     60  3.7e-17  -             1.0e-16
+//	ncf_wide    tail           60  6.3e-17  -             5.0e-16
+//	ncf_wide    log           120  5.9e-17  -             5.7e-16
+//	ncf_wide    density        60  1.0e-16  -             7.6e-16
+//	ncf_wide    logdensity     60  4.7e-17  -             6.1e-16
+//	ncinv       lambda        130  4.9e-17  7.4e-16       7.4e-16
 //
 // What is not promised: the far ends of quantiles are as sharp as the tail allows, which is
 // poor where the tail hardly depends on x (an error of 1e-16 in p moves a chi-squared quantile with
