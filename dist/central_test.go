@@ -21,6 +21,8 @@ var centralLaws = []lawtest.Law{
 	dist.ChiSquared{K: 5}, dist.ChiSquared{K: 33}, dist.ChiSquared{K: 1e3}, dist.ChiSquared{K: 1e6}, dist.ChiSquared{K: 1e12},
 	dist.F{D1: 0.3, D2: 0.7}, dist.F{D1: 1, D2: 1}, dist.F{D1: 3, D2: 20}, dist.F{D1: 3.3, D2: 17.6}, dist.F{D1: 2, D2: 9},
 	dist.F{D1: 40, D2: 200}, dist.F{D1: 1e4, D2: 3}, dist.F{D1: 5, D2: 1e9}, dist.F{D1: 7, D2: inf}, dist.F{D1: 1e11, D2: 1e12},
+	dist.Beta{A: 0.3, B: 0.2}, dist.Beta{A: 1, B: 1}, dist.Beta{A: 8.5, B: 2}, dist.Beta{A: 3, B: 700.5}, dist.Beta{A: 1e7, B: 4e6},
+	dist.Gamma{Shape: 0.4, Scale: 3}, dist.Gamma{Shape: 1, Scale: 1e-200}, dist.Gamma{Shape: 12.3, Scale: 0.7}, dist.Gamma{Shape: 1e9, Scale: 1e5},
 	dist.StudentT{Nu: 0.5}, dist.StudentT{Nu: 1}, dist.StudentT{Nu: 3.7}, dist.StudentT{Nu: 12}, dist.StudentT{Nu: 1e6}, dist.StudentT{Nu: inf},
 }
 
@@ -36,6 +38,10 @@ func TestCentralLaws(t *testing.T) {
 				bad = append(bad, dist.F{D1: v, D2: 3}, dist.F{D1: 3, D2: v}, dist.F{D1: inf, D2: 3})
 			case dist.StudentT:
 				bad = append(bad, dist.StudentT{Nu: v})
+			case dist.Beta:
+				bad = append(bad, dist.Beta{A: v, B: 3}, dist.Beta{A: 3, B: v}, dist.Beta{A: inf, B: 1})
+			case dist.Gamma:
+				bad = append(bad, dist.Gamma{Shape: v, Scale: 3}, dist.Gamma{Shape: 3, Scale: v})
 			}
 		}
 		t.Run(law.String(), func(t *testing.T) {

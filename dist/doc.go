@@ -1,5 +1,5 @@
 // Package dist holds the probability laws that comparisons of nested models
-// are referred to: F, chi-squared and t, central and noncentral, the laws of the
+// are referred to: F, chi-squared, t, beta and gamma, the noncentral F, chi-squared and t, the laws of the
 // largest of several differences, and mixtures for parameters on a boundary.
 //
 //	null := dist.F{D1: 3, D2: 20}
@@ -41,7 +41,7 @@
 //
 // # How the central laws are computed
 //
-// With a = K/2, x the half of the statistic (chi-squared), or a = D1/2, b = D2/2,
+// With a = K/2, x the half of the statistic (chi-squared; Gamma directly), or a = D1/2, b = D2/2,
 // X = D1 x/(D1 x + D2) and Y = 1 - X (F; Student's t is F with D1 = 1), formed in
 // double-double. A law has one tail that is computed, on the side away from the mode of
 // log x or logit X, where it cannot be near 1; the other is its complement.

@@ -142,3 +142,22 @@ func ExampleLaw() {
 	// ChiSquared(2): 5.9915
 	// F(2, 10): 4.1028
 }
+
+// The exact law of the likelihood ratio of two nested linear models: with n = 24 rows, 4 free
+// means in the larger and 1 in the smaller, λ^(2/n) = RSS of the larger over RSS of the smaller.
+func ExampleBeta() {
+	null := dist.Beta{A: 20.0 / 2, B: 3.0 / 2}
+	fmt.Printf("P(ratio <= 0.57) = %.5f\n", null.CDF(0.57))
+	// The same as the F test, F = (20/3) (1 - 0.57)/0.57.
+	fmt.Printf("P(F >= %.4f) = %.5f\n", 20.0/3*0.43/0.57, dist.F{D1: 3, D2: 20}.Survival(20.0/3*0.43/0.57))
+	// Output:
+	// P(ratio <= 0.57) = 0.00929
+	// P(F >= 5.0292) = 0.00929
+}
+
+// The total of 12 waiting times of mean 5 minutes.
+func ExampleGamma() {
+	total := dist.Gamma{Shape: 12, Scale: 5}
+	fmt.Printf("mean %.0f, P(total > 90) = %.4f, 95 %% stay below %.1f\n", total.Mean(), total.Survival(90), total.UpperQuantile(0.05))
+	// Output: mean 60, P(total > 90) = 0.0549, 95 % stay below 91.0
+}

@@ -12,7 +12,7 @@ type invertible interface {
 	// the tail is at least tinyTail; and the hazard density(x)/tail, which may be 0 or
 	// +Inf where it cannot be told (bisection then takes over).
 	tailAt(x float64, upper bool) (tail, logTail, hazard float64)
-	// support returns the ends of the support: (0, +Inf) or (-Inf, +Inf).
+	// support returns the ends of the support: (0, +Inf), (0, 1) or (-Inf, +Inf).
 	support() (lo, hi float64)
 }
 
@@ -52,6 +52,8 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		x = 1
 		if !positive {
 			x = 0
+		} else if hi <= 1 {
+			x = hi / 2
 		}
 	}
 	slow := 0
@@ -144,7 +146,7 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 	}
 	switch {
 	case bestR < 1e-9:
-	case b == orderOf(hi) && right(math.MaxFloat64):
+	case b == orderOf(hi) && right(math.Nextafter(hi, lo)):
 		return hi
 	case positive && a == orderOf(lo) && !right(5e-324):
 		return lo

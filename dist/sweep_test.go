@@ -38,7 +38,11 @@ func sweepPoint(r *rand.Rand) (fullLaw, float64) {
 		return logUniform(r, 1e-3, 1e12)
 	}
 	var law fullLaw
-	switch r.IntN(4) {
+	switch r.IntN(6) {
+	case 4:
+		law = dist.Beta{A: df() / 2, B: df() / 2}
+	case 5:
+		law = dist.Gamma{Shape: df() / 2, Scale: logUniform(r, 1e-100, 1e100)}
 	case 0:
 		law = dist.ChiSquared{K: df()}
 	case 1:
@@ -58,6 +62,20 @@ func sweepPoint(r *rand.Rand) (fullLaw, float64) {
 		x = 1 + r.NormFloat64()*math.Exp(-12*r.Float64())
 		if c, ok := law.(dist.ChiSquared); ok {
 			x = c.K + r.NormFloat64()*math.Sqrt(2*c.K)*3
+		}
+	}
+	switch law := law.(type) {
+	case dist.Beta:
+		m, s := law.Mean(), math.Sqrt(law.Variance())
+		if x = m + 3*s*r.NormFloat64(); !(x > 0 && x < 1) || r.IntN(3) == 0 {
+			x = math.Exp(-math.Abs(r.NormFloat64()) * 200 * r.Float64())
+		}
+		if r.IntN(8) == 0 {
+			x = 1 - x
+		}
+	case dist.Gamma:
+		if x = law.Mean() * (1 + 3*r.NormFloat64()/math.Sqrt(law.Shape)); !(x > 0) {
+			x = law.Scale * math.Exp(r.NormFloat64()*100)
 		}
 	}
 	if _, ok := law.(dist.StudentT); ok && r.IntN(2) == 0 {

@@ -260,6 +260,7 @@ func (c *checker) inverses() {
 }
 
 func (c *checker) extremes() {
+	ends := [2]float64{c.law.Quantile(0), c.law.Quantile(1)}
 	for p := 1e-15; p >= c.Smallest; p *= 1e-15 {
 		for _, e := range []struct {
 			name  string
@@ -273,6 +274,13 @@ func (c *checker) extremes() {
 			}
 			if math.IsInf(e.x, 0) || math.Abs(e.x) < 1e-300 || c.Atom && !e.upper {
 				continue // beyond the floats, or an atom
+			}
+			if e.x == ends[0] || e.x == ends[1] {
+				// Right when no float inside the support has a tail as small.
+				if inner := math.Nextafter(e.x, c.law.Quantile(0.5)); e.tail(inner) < p*(1-8*c.Tolerance) {
+					c.add("extremes", e.x, "%s(%g) is the end of the support, the tail at %v is %g", e.name, p, inner, e.tail(inner))
+				}
+				continue
 			}
 			got := e.tail(e.x)
 			// One ulp of x is worth x density/tail ulps of the tail.
@@ -359,7 +367,7 @@ func (c *checker) variates() {
 	if !(ad < 6) {
 		c.add("variates", math.NaN(), "Anderson-Darling A² = %.3f of %d draws, limit 6", ad, n)
 	}
-	if m, s := c.law.Mean(), c.law.Variance(); s >= 0 && !math.IsInf(s, 1) && !math.IsNaN(m) {
+	if m, s := c.law.Mean(), c.law.Variance(); s > 0 && !math.IsInf(s, 1) && !math.IsNaN(m) {
 		if z := (sum/float64(n) - m) / math.Sqrt(s/float64(n)); !(math.Abs(z) <= 6) {
 			c.add("moments", math.NaN(), "the mean of %d draws is %v, Mean %v, Variance %v: %.1f standard errors", n, sum/float64(n), m, s, z)
 		}
