@@ -108,7 +108,7 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		if !upper {
 			step = -step
 		}
-		next := math.NaN()
+		var next float64
 		switch {
 		case math.Abs(step) < 1e-9:
 			next = x + step*scale

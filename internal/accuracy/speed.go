@@ -72,8 +72,6 @@ func Speeds() []Speed {
 	}
 }
 
-var speedSink float64
-
 // Nanoseconds returns the time of f(x), measured for about the given number of milliseconds.
 func Nanoseconds(f func(float64) float64, x float64, milliseconds int) float64 {
 	if flag.Lookup("test.benchtime") == nil {
@@ -86,7 +84,7 @@ func Nanoseconds(f func(float64) float64, x float64, milliseconds int) float64 {
 	for range 3 {
 		r := testing.Benchmark(func(b *testing.B) {
 			for b.Loop() {
-				speedSink = f(x)
+				f(x)
 			}
 		})
 		best = min(best, float64(r.T.Nanoseconds())/float64(r.N))

@@ -36,8 +36,6 @@ func ExpScaled(a DD) (m DD, k int) {
 	r := DD{Hi: a.Hi, Lo: a.Lo}
 	if math.Abs(n) <= 1<<13 {
 		s, e := TwoSum(a.Hi, -float64(n*ln2p1))
-		r = Sum(s, e+a.Lo)
-		// e + a.Lo may round; keep its error too.
 		f, g := TwoSum(e, a.Lo)
 		s, f2 := TwoSum(s, f)
 		r = DD{s, f2}.AddF(g)
