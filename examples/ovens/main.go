@@ -13,7 +13,8 @@
 //
 // asks the same of any file. Run it with -help for the flags. Bad input ends
 // it with exit code 2 and a message that names the place in the file; any other
-// failure with exit code 1.
+// failure with exit code 1. (The go command prints "exit status 2" and itself
+// ends with 1; build the program where the code matters.)
 package main
 
 import (
