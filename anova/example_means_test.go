@@ -74,7 +74,7 @@ func ExampleGroups_Test() {
 	}
 	fmt.Print(pairs)
 	// Output:
-	// Differences of strength by press × resin
+	// Contrasts of strength by press × resin
 	// adjusted: Holm · tests: 6 · level 95 % · all equal: F = 58.4368 · p = 8.77e-06
 	//
 	// contrast                        estimate         SE          t           p   adjusted p      lower     upper   reading

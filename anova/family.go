@@ -100,7 +100,7 @@ func (g *Groups) Test(ctx context.Context, cs []Contrast, method Method, s *lrt.
 	for _, c := range cs {
 		questions = append(questions, g.question(c))
 	}
-	questions = append(questions, g.allEqual())
+	questions = append(questions, g.allEqual(cs))
 	settings := lrt.Settings{}
 	if s != nil {
 		settings = *s
@@ -145,15 +145,12 @@ func runAll(ctx context.Context, questions []lrt.Comparison, s *lrt.Settings) ([
 	return rows, nil
 }
 
-// over returns the weights of a contrast over the rows of the groups.
+// over returns the weights of a function of the groups over the rows.
 func (g *Groups) over(w []float64) []float64 {
 	out := make([]float64, g.rows.Len())
-	for i, x := range w {
-		if x == 0 {
-			continue
-		}
-		for r, y := range g.weights[i] {
-			out[r] += x * y
+	for r := range out {
+		if x := w[g.group[r]]; x != 0 {
+			out[r] = x * g.weight[r]
 		}
 	}
 	return out
@@ -174,21 +171,42 @@ func (g *Groups) question(c Contrast) lrt.Comparison {
 	return q
 }
 
-// allEqual is the comparison of all estimable groups being equal.
-func (g *Groups) allEqual() lrt.Comparison {
+// allEqual is the comparison of all groups having one mean, as far as the data can
+// tell: of groups that cannot be compared each set has a mean of its own, and the contrasts
+// asked for, which may lie across the sets, are zero too.
+func (g *Groups) allEqual(cs []Contrast) lrt.Comparison {
 	var eqs []lrt.Equation
-	first := -1
+	add := func(w []float64) bool {
+		o := g.over(w)
+		if _, err := g.rows.Estimate(o); err != nil {
+			return false
+		}
+		e, err := g.rows.Equation(o, 0)
+		if err == nil {
+			eqs = append(eqs, e)
+		}
+		return true
+	}
+	var first []int // of each set
+	lost := false
 	for i, q := range g.list {
-		switch {
-		case q.Err != nil:
-		case first < 0:
-			first = i
-		default:
+		lost = lost || q.Err != nil
+		known := false
+		for _, k := range first {
 			w := make([]float64, len(g.list))
-			w[first], w[i] = 1, -1
-			if e, err := g.rows.Equation(g.over(w), 0); err == nil {
-				eqs = append(eqs, e)
+			w[k], w[i] = 1, -1
+			if known = add(w); known {
+				break
 			}
+		}
+		if !known {
+			first = append(first, i)
+		}
+	}
+	if lost {
+		for _, c := range cs {
+			w, _ := c.wholeWeights()
+			add(w)
 		}
 	}
 	c := lrt.Comparison{Name: "all equal", Full: g.model}
@@ -210,9 +228,7 @@ func (g *Groups) estimate(c Contrast, r Row, level float64) ContrastResult {
 	w, k := c.wholeWeights()
 	e, err := g.rows.Estimate(g.over(w))
 	if err != nil {
-		if l.Row.err == nil {
-			l.Row.err = err
-		}
+		l.Row.err = g.why(err, w)
 		return l
 	}
 	e.Value, e.SE = e.Value/k, e.SE/k

@@ -2,6 +2,7 @@ package anova
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -34,7 +35,9 @@ type Groups struct {
 	others   []string // factors averaged over
 	observed bool
 	rows     *glm.RowMeans
-	weights  [][]float64 // of each group, over rows
+	group    []int     // of each of the rows
+	weight   []float64 // of each of the rows in the mean of its group
+	empty    []string  // name of each of the rows without observations; "" for others
 }
 
 // Group is one of Groups.
@@ -105,10 +108,12 @@ func Means(ctx context.Context, m *glm.Model, factors []string, o *MeansOptions,
 		return nil, err
 	}
 	for i := range g.list {
-		e, err := g.rows.Estimate(g.weights[i])
+		w := make([]float64, len(g.list))
+		w[i] = 1
+		e, err := g.rows.Estimate(g.over(w))
 		if err != nil {
 			n := math.NaN()
-			e, g.list[i].Err = glm.Estimate{Value: n, SE: n, T: n, P: n, Lower: n, Upper: n}, err
+			e, g.list[i].Err = glm.Estimate{Value: n, SE: n, T: n, P: n, Lower: n, Upper: n}, g.why(err, w)
 		}
 		g.list[i].Adjusted = e
 	}
@@ -238,7 +243,7 @@ func (g *Groups) spread(ctx context.Context, v *survey) error {
 	rows := newGrid(src, all)
 	share := make(map[string]float64) // of each combination of the other factors
 	other := make([]string, all)
-	group := make([]int, all)
+	g.group, g.weight, g.empty = make([]int, all), make([]float64, all), make([]string, all)
 	combos := 0.0
 	for c := range all {
 		name := ""
@@ -253,12 +258,15 @@ func (g *Groups) spread(ctx context.Context, v *survey) error {
 			}
 		}
 		for k, f := range g.factors {
-			group[c] = group[c]*len(v.cells.Levels[slices.Index(v.cells.Factors, f)]) + pick[k]
+			g.group[c] = g.group[c]*len(v.cells.Levels[slices.Index(v.cells.Factors, f)]) + pick[k]
 		}
 		for _, h := range g.at {
 			rows.set(fieldAt(src, h.Field), c, cellValue{hi: h.Value})
 		}
 		other[c] = name
+		if v.cells.Count[c] == 0 {
+			g.empty[c] = v.cells.Name(c)
+		}
 		if _, ok := share[name]; !ok {
 			combos++
 		}
@@ -268,20 +276,32 @@ func (g *Groups) spread(ctx context.Context, v *survey) error {
 	for _, n := range v.cells.Count {
 		total += n
 	}
-	g.weights = make([][]float64, len(g.list))
-	for i := range g.weights {
-		g.weights[i] = make([]float64, all)
-	}
 	for c := range all {
-		w := 1 / combos
+		g.weight[c] = 1 / combos
 		if g.observed {
-			w = share[other[c]] / total
+			g.weight[c] = share[other[c]] / total
 		}
-		g.weights[group[c]][c] = w
 	}
 	var err error
 	g.rows, err = g.fit.RowMeans(ctx, rows)
 	return err
+}
+
+// why names the empty cells that a function of the groups would need.
+func (g *Groups) why(err error, w []float64) error {
+	if !errors.Is(err, glm.ErrNotEstimable) {
+		return err
+	}
+	var cells []string
+	for c, x := range g.over(w) {
+		if x != 0 && g.empty[c] != "" {
+			cells = append(cells, g.empty[c])
+		}
+	}
+	if len(cells) == 0 {
+		return err
+	}
+	return &EmptyCellsError{Cells: cells}
 }
 
 // List returns the groups in the order of the levels, the last factor fastest.

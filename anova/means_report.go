@@ -51,7 +51,7 @@ func (g *Groups) Report() Report {
 			"mean_lower": Number(q.Raw.Lower).because("too-few"), "mean_upper": Number(q.Raw.Upper).because("too-few")}
 		if q.Err != nil {
 			v["note"] = Text("not estimable")
-			r.Notes = append(r.Notes, q.Name+": "+q.Err.Error())
+			r.Notes = append(r.Notes, q.Name+": "+strings.TrimPrefix(q.Err.Error(), "glm: "))
 		} else {
 			v["adjusted"], v["se"] = Number(q.Adjusted.Value), Number(q.Adjusted.SE).because("no-error-df")
 			v["lower"], v["upper"] = Number(q.Adjusted.Lower).because("no-error-df"), Number(q.Adjusted.Upper).because("no-error-df")
@@ -116,7 +116,7 @@ func (f Family) Report() Report {
 	g := f.groups
 	d1, d2 := f.all.DF()
 	t := f.all.Test()
-	r := Report{Schema: "anova.contrasts/1", Title: "Differences of " + g.model.Response() + " by " + strings.Join(g.factors, " × "),
+	r := Report{Schema: "anova.contrasts/1", Title: "Contrasts of " + g.model.Response() + " by " + strings.Join(g.factors, " × "),
 		Facts: []Fact{
 			{"response", "", Text(g.model.Response())},
 			{"factors", "", Text(strings.Join(g.factors, " × "))},

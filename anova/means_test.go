@@ -394,3 +394,63 @@ func TestNullValue(t *testing.T) {
 		t.Errorf("the null value is not shown:\n%s", s)
 	}
 }
+
+// TestPrecisionWeights: weighted means by the formulas Σwy/Σw and √(Σw(y−m)²/(n−1)/Σw)
+// (common practice, no source).
+func TestPrecisionWeights(t *testing.T) {
+	ctx := context.Background()
+	y, w := []float64{3, 5, 4, 9, 8, 7.5}, []float64{1, 2, 0, 4, 0.5, 1}
+	d, err := glm.NewData(glm.Labels("g", []string{"a", "a", "a", "b", "b", "b"}), glm.Numbers("y", y), glm.Numbers("w", w))
+	if err != nil {
+		t.Fatal(err)
+	}
+	o := &anova.Options{Model: &glm.Options{Weights: glm.Weights{Kind: glm.Precision, Field: "w"}}}
+	cs, err := anova.OneWay(ctx, d, "y", "g", o)
+	tab := tabulate(t, cs, err)
+	for k, q := range means(t, tab.Model(), nil, "g").List() {
+		sw, swy, n := 0.0, 0.0, 0.0
+		for i := 3 * k; i < 3*k+3; i++ {
+			if w[i] > 0 {
+				sw, swy, n = sw+w[i], swy+w[i]*y[i], n+1
+			}
+		}
+		m := swy / sw
+		ss := 0.0
+		for i := 3 * k; i < 3*k+3; i++ {
+			ss += w[i] * (y[i] - m) * (y[i] - m)
+		}
+		se := math.Sqrt(ss / (n - 1) / sw)
+		if q.N != n || math.Abs(q.Raw.Mean-m) > 1e-14*m || math.Abs(q.Raw.SE-se) > 1e-13*se || math.Abs(q.Adjusted.Value-m) > 1e-14*m {
+			t.Errorf("%s: %+v, want n %g, mean %g, SE %g", q.Name, q, n, m, se)
+		}
+	}
+	if e, _ := tab.Error(); e.DF != 3 {
+		t.Errorf("error df %g: the row of weight 0 counts", e.DF)
+	}
+}
+
+// TestScheffeAcrossSets: groups that cannot be compared one by one do not stop the family.
+func TestScheffeAcrossSets(t *testing.T) {
+	ctx := context.Background()
+	d, err := glm.NewData(glm.Labels("a", []string{"1", "1", "2", "2", "3", "3", "4", "4"}),
+		glm.Labels("b", []string{"p", "p", "p", "p", "q", "q", "q", "q"}),
+		glm.Numbers("y", []float64{1, 2, 4, 5, 9, 7, 3, 1}))
+	if err != nil {
+		t.Fatal(err)
+	}
+	cs, err := anova.Crossed(ctx, d, "y", []string{"a", "b"}, &anova.Options{Order: 1})
+	g := means(t, tabulate(t, cs, err).Model(), nil, "a")
+	f := family(t, g, g.Pairs(), anova.Scheffe, 0.95)
+	if f.Dimension() != 2 {
+		t.Errorf("dimension %g, want 2: levels 1, 2 and 3, 4 of a can be compared, not across b", f.Dimension())
+	}
+	for _, l := range f.Lines() {
+		within := l.Name == "2 − 1" || l.Name == "4 − 3"
+		if (l.Row.Err() == nil) != within {
+			t.Errorf("%s: %v", l.Name, l.Row.Err())
+		}
+		if within && !(l.AdjustedP > l.P) {
+			t.Errorf("%s: p %g, adjusted %g", l.Name, l.P, l.AdjustedP)
+		}
+	}
+}

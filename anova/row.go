@@ -167,5 +167,5 @@ func (r Row) note() string {
 	case errors.Is(err, lrt.ErrNoVariation):
 		return "not tested: " + lrt.ErrNoVariation.Error()
 	}
-	return err.Error()
+	return strings.TrimPrefix(err.Error(), "glm: ")
 }

@@ -68,7 +68,14 @@ func (t Table) Report() Report {
 	shared := t.shared()
 	if !shared { // each row then shows its own error
 		r.title("df_error", "error df")
-		r.title("ms_error", "error mean square")
+		if m := t.model(); m == nil || m.Options().KnownVariance == 0 {
+			r.title("ms_error", "error mean square")
+		}
+	}
+	for _, row := range t.rows {
+		if row.err == nil && row.Test().Name != "F" {
+			r.title("statistic", "statistic")
+		}
 	}
 	for _, row := range t.rows {
 		r.add("not-tested", row.values(t.level))
@@ -163,7 +170,7 @@ func (t Table) notes(shared bool) []string {
 			n = append(n, "error: what "+clip(bare(m))+" leaves")
 		}
 		if t.strata() {
-			n = append(n, "log λ is a ratio over all rows where the error of the row is what its own larger model leaves, else over the stratum of the row and its error")
+			n = append(n, "log λ is over all rows where a row's own larger model leaves its error, else over the stratum of the row and its error")
 		}
 		o := m.Options()
 		if o.Weights.Kind != glm.NoWeights {
@@ -179,7 +186,7 @@ func (t Table) notes(shared bool) []string {
 // strata reports whether some λ is that of a stratum.
 func (t Table) strata() bool {
 	for _, r := range t.rows {
-		if r.err == nil && r.pair.Linear.Stratum {
+		if r.err == nil && r.pair.Linear.Stratum && r.pair.Linear.Known <= 0 {
 			return true
 		}
 	}
@@ -190,18 +197,35 @@ func (t Table) strata() bool {
 func (r Row) question(shared bool) string {
 	restricted, full := bare(r.comparison.Restricted), bare(r.comparison.Full)
 	s := r.Name() + ": "
+	if _, ok := r.comparison.Full.(*refused); ok {
+		return s + r.note()
+	}
 	if eqs, ok := equations(restricted, full); ok {
 		s += "hypothesis " + firstEquation(eqs) + " inside " + clip(full)
 	} else {
 		s += clip(restricted) + " inside " + clip(full)
 	}
 	if e := r.ErrorSpace(); e != "" && !shared {
-		s += "; error: what " + clip(e) + " leaves"
+		if e == spaceName(r.comparison.Full) {
+			s += "; error: what that leaves"
+		} else if m := responseOf(r); m != "" {
+			s += "; error: what " + clip(strings.ReplaceAll(e, m+" by ", "")) + " leaves"
+		} else {
+			s += "; error: what " + clip(e) + " leaves"
+		}
 	}
 	if n := r.note(); n != "" {
 		s += "; " + n
 	}
 	return s
+}
+
+// responseOf returns the name of the response of a linear row.
+func responseOf(r Row) string {
+	if m, ok := r.comparison.Full.(*glm.Model); ok {
+		return m.Response()
+	}
+	return ""
 }
 
 // firstEquation shortens a list of equations to the first.

@@ -240,8 +240,10 @@ func (j *joint) errorPair(c lrt.Comparison, l *lrt.Linear, s, b *view) (e0, e1 *
 	}
 	l.Denominator = math.Max(l.Denominator, 0)
 	if c.Error != nil && (e1 != nil || !sameGroups(e0, b)) {
-		l.Stratum = true
-		l.M = float64(l.RankB - l.RankS + l.RankE1 - l.RankE0)
+		// With nothing in the stratum there is no test, and M = 0 would say "not linear".
+		if m := l.RankB - l.RankS + l.RankE1 - l.RankE0; m > 0 {
+			l.Stratum, l.M = true, float64(m)
+		}
 	}
 	return e0, e1, nil
 }
