@@ -67,8 +67,8 @@ func Example() {
 	// - resin: constant + press inside constant + press + resin
 	// - press × resin: constant + press + resin inside constant + press + resin + press × resin
 	// - error: what constant + press + resin + press × resin leaves
-	// - log λ is over all rows where a row's own larger model leaves its error, else over the stratum
-	//   of the row and its error
+	// - log λ is a ratio over all rows where the error of the row is what its own larger model leaves,
+	//   else over the stratum of the row and its error
 }
 
 func ExampleOneWay() {
@@ -132,8 +132,8 @@ func ExampleTerms() {
 	// - dose: constant inside constant + dose
 	// - dose as levels: constant + dose inside constant + dose + dose as levels
 	// - error: what constant + dose + dose as levels leaves
-	// - log λ is over all rows where a row's own larger model leaves its error, else over the stratum
-	//   of the row and its error
+	// - log λ is a ratio over all rows where the error of the row is what its own larger model leaves,
+	//   else over the stratum of the row and its error
 	// ! collinear: earlier columns span, and so set aside: dose=8
 }
 

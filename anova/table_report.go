@@ -170,7 +170,7 @@ func (t Table) notes(shared bool) []string {
 			n = append(n, "error: what "+clip(bare(m))+" leaves")
 		}
 		if t.strata() {
-			n = append(n, "log λ is over all rows where a row's own larger model leaves its error, else over the stratum of the row and its error")
+			n = append(n, "log λ is a ratio over all rows where the error of the row is what its own larger model leaves, else over the stratum of the row and its error")
 		}
 		o := m.Options()
 		if o.Weights.Kind != glm.NoWeights {
