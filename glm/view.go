@@ -361,7 +361,7 @@ func (m *Model) alone(ctx context.Context) (*joint, *view, error) {
 func (m *Model) NestedIn(larger lrt.Space) error {
 	b, ok := larger.(*Model)
 	if !ok {
-		return fmt.Errorf("%w: %T is not a linear model", lrt.ErrNotNested, larger)
+		return fmt.Errorf("glm: %w: %T is not a linear model of this package", lrt.ErrNotNested, larger)
 	}
 	cs, err := Join(context.Background(), lrt.Comparison{Restricted: m, Full: b})
 	if err != nil {
@@ -376,6 +376,8 @@ func (m *Model) NestedIn(larger lrt.Space) error {
 	if err != nil {
 		return err
 	}
-	_, err = j.nested(sv, bv)
-	return err
+	if _, err = j.nested(sv, bv); err != nil {
+		return fmt.Errorf("glm: %w", err)
+	}
+	return nil
 }
