@@ -124,8 +124,13 @@ type span struct {
 // ranges passes over the rows of the fit and finds the range of each numeric field it uses.
 func (f *Fit) ranges(ctx context.Context) ([]span, error) {
 	var spans []span
+	seen := make(map[string]bool)
 	for _, b := range f.Model.cols {
 		for _, n := range b.numeric {
+			if seen[n] {
+				continue
+			}
+			seen[n] = true
 			at, err := findNumeric(f.j.src, n)
 			if err != nil {
 				return nil, err

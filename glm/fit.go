@@ -20,6 +20,7 @@ type Coefficient struct {
 	SE float64
 	// T is Estimate/SE, P the two-sided p-value of the hypothesis that the
 	// coefficient is zero, by Student's t (or the normal law with known variance).
+	// Both are NaN where restrictions fix the coefficient (SE 0).
 	T, P float64
 	// Lower and Upper bound the interval of Fit.Level.
 	Lower, Upper float64
@@ -234,7 +235,10 @@ func newReading(f *Fit, variance float64) *reading {
 	return r
 }
 
-// Estimate is an estimated linear function of the coefficients.
+// Estimate is an estimated linear function of the coefficients: value, standard
+// error, t with its two-sided p-value, and the interval of Fit.Level. Where
+// restrictions fix the value SE is 0 and T and P are NaN; without error degrees of
+// freedom all but Value are NaN.
 type Estimate struct {
 	Value, SE, T, P, Lower, Upper float64
 }
@@ -244,7 +248,11 @@ func (f *Fit) half(ws []weight) (c linalg.Vec, carried dd.DD, h linalg.Half, bad
 	c, carried = f.j.pullback(f.Model, ws)
 	h, bad, worst = f.f.Half(c)
 	if f.v.restr != nil {
+		all := h.Dot(h).Float64()
 		h, _ = f.v.restr.reduce(h)
+		if h.Dot(h).Float64() <= 1e-24*all { // what is left is rounding: the restrictions fix it
+			h = h.Scale(dd.DD{})
+		}
 	}
 	return c, carried, h, bad, worst
 }
@@ -282,7 +290,7 @@ func (r *reading) estimate(ws []weight, se bool) (Estimate, float64, int) {
 		l.Known = 1
 	}
 	switch {
-	case e.SE == 0 && e.Value == 0:
+	case e.SE == 0 && (e.Value == 0 || r.variance > 0): // nil, or fixed by the restrictions
 		e.T, e.P = math.NaN(), math.NaN()
 	case e.SE == 0:
 		e.P = 0

@@ -227,3 +227,20 @@ func TestPredictOffset(t *testing.T) {
 		t.Errorf("without the offset: %v", err)
 	}
 }
+
+// TestPredictWeights: weights are not needed, and a field beyond its range is named once.
+func TestPredictWeights(t *testing.T) {
+	p := field(53, 40)
+	f := fitted(t, model(t, p.data(t), &glm.Options{Weights: glm.Weights{Kind: glm.Precision, Field: "w"}}, one, cx, fa, glm.Cross{fa, cx}))
+	ps, _ := predict(t, f, newData(t, glm.Numbers("x", []float64{0.5, 50}), glm.Labels("a", []string{"q", "q"})))
+	e, err := f.Combination(glm.Weight{Name: "constant", Coef: 1}, glm.Weight{Name: "x", Coef: 0.5}, glm.Weight{Name: "a=q", Coef: 1}, glm.Weight{Name: "a=q × x", Coef: 0.5})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if relative(ps[0].Value, e.Value) > 1e-13 || relative(ps[0].SE, e.SE) > 1e-13 || relative(ps[0].Upper, e.Upper) > 1e-13 {
+		t.Errorf("%+v, want %+v", ps[0], e)
+	}
+	if !slices.Equal(ps[1].Outside, []string{"x"}) {
+		t.Errorf("outside: %v", ps[1].Outside)
+	}
+}

@@ -314,3 +314,76 @@ func TestTwoTermsOfOneName(t *testing.T) {
 		t.Errorf("%v", err)
 	}
 }
+
+// TestFixedByRestriction: what restrictions fix has no error and no test.
+func TestFixedByRestriction(t *testing.T) {
+	s, err := model(t, field(86, 40).data(t), nil, one, cx, fa).Restrict(lrt.Fix("x", 0.25), lrt.Equate("a=p", "a=q"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	f := fitted(t, s.(*glm.Model))
+	x, err := f.Coefficient("x")
+	if err != nil || math.Abs(x.Estimate-0.25) > 1e-15 || x.SE != 0 || !math.IsNaN(x.T) || !math.IsNaN(x.P) || x.Lower != x.Estimate {
+		t.Errorf("%+v", x)
+	}
+	e, err := f.Combination(glm.Weight{Name: "x", Coef: 2}, glm.Weight{Name: "a=p", Coef: 1}, glm.Weight{Name: "a=q", Coef: -1})
+	if err != nil || math.Abs(e.Value-0.5) > 1e-14 || e.SE != 0 {
+		t.Errorf("%+v %v", e, err)
+	}
+}
+
+// TestRandomRestrictions: linear equations between coefficients are the model on
+// columns that obey them.
+func TestRandomRestrictions(t *testing.T) {
+	ctx := context.Background()
+	for seed := range uint64(20) {
+		r := rand.New(rand.NewPCG(seed, 3))
+		const n = 25
+		cols := []glm.Column{}
+		x := make([][]float64, 4)
+		y := make([]float64, n)
+		for i := range y {
+			y[i] = 5 + r.NormFloat64()
+		}
+		for k := range x {
+			x[k] = make([]float64, n)
+			for i := range x[k] {
+				x[k][i] = float64(r.IntN(20))
+			}
+			cols = append(cols, glm.Numbers(fmt.Sprint("x", k), x[k]))
+		}
+		// b0·c0 + b1·c1 + b2·c2 = v: b2 = (v − b0 c0 − b1 c1)/c2.
+		c0, c1, c2, v := float64(r.IntN(5)-2), float64(r.IntN(5)-2), float64(1+r.IntN(2)), float64(r.IntN(7)-3)
+		u0, u1, off := make([]float64, n), make([]float64, n), make([]float64, n)
+		for i := range y {
+			u0[i], u1[i], off[i] = x[0][i]-c0/c2*x[2][i], x[1][i]-c1/c2*x[2][i], v/c2*x[2][i]
+		}
+		d := newData(t, append(cols, glm.Numbers("y", y), glm.Numbers("u0", u0), glm.Numbers("u1", u1), glm.Numbers("off", off))...)
+		cov := func(name string) glm.Term { return glm.Covariate{Field: name} }
+		full := model(t, d, nil, one, cov("x0"), cov("x1"), cov("x2"), cov("x3"))
+		s, err := full.Restrict(lrt.Equations(lrt.Equation{Names: []string{"x0", "x1", "x2"}, Coef: []float64{c0, c1, c2}, Value: v}))
+		if err != nil {
+			t.Fatal(err)
+		}
+		f := fitted(t, s.(*glm.Model))
+		g := fitted(t, model(t, d, &glm.Options{Offset: "off"}, one, cov("u0"), cov("u1"), cov("x3")))
+		if f.Rank != g.Rank || relative(f.RSS, g.RSS) > 1e-12 {
+			t.Errorf("seed %d: rank %d RSS %.15g, want %d %.15g", seed, f.Rank, f.RSS, g.Rank, g.RSS)
+		}
+		for i, name := range []string{"x0", "x1"} {
+			a, _ := f.Coefficient(name)
+			b := g.Coefficients[i+1]
+			if math.Abs(a.Estimate-b.Estimate) > 1e-12 || relative(a.SE, b.SE) > 1e-10 {
+				t.Errorf("seed %d: %s = %g ± %g, want %g ± %g", seed, name, a.Estimate, a.SE, b.Estimate, b.SE)
+			}
+		}
+		a := compare(t, s, full)
+		b, err := lrt.Compare(ctx, model(t, d, &glm.Options{Offset: "off"}, one, cov("u0"), cov("u1"), cov("x3")), full, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if relative(a.Exact.Statistic, b.Exact.Statistic) > 1e-11 || a.Pair.DF != 1 || b.Pair.DF != 1 {
+			t.Errorf("seed %d: F %.15g by equation, %.15g by offset", seed, a.Exact.Statistic, b.Exact.Statistic)
+		}
+	}
+}

@@ -150,7 +150,7 @@ type Prediction struct {
 	Value float64
 	// SE is the standard error of the mean, Lower and Upper its interval.
 	SE, Lower, Upper float64
-	// NewLower and NewUpper bound one new observation.
+	// NewLower and NewUpper bound one new observation (of weight 1).
 	NewLower, NewUpper float64
 	// Estimable is false where the new row asks for a combination of columns
 	// that the data say nothing about; the other numbers are then NaN.
