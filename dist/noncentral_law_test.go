@@ -228,3 +228,24 @@ func ulpSlack(l, s float64, logTail func(float64) float64) float64 {
 	}
 	return 4e-16 * math.Abs(l) * slope
 }
+
+// TestNoncentralAllocations wants none in tails and densities, whatever the region.
+func TestNoncentralAllocations(t *testing.T) {
+	for _, c := range []struct {
+		law fullLaw
+		x   float64
+	}{
+		{dist.NoncentralChiSquared{K: 3, Lambda: 5}, 17}, {dist.NoncentralChiSquared{K: 3, Lambda: 5}, 1e-260},
+		{dist.NoncentralChiSquared{K: 50, Lambda: 1e6}, 1e6}, {dist.NoncentralChiSquared{K: 0.1, Lambda: 700}, 1e-200},
+		{dist.NoncentralF{D1: 3, D2: 20, Lambda: 5}, 2}, {dist.NoncentralF{D1: 3, D2: 20, Lambda: 900}, 300},
+		{dist.NoncentralF{D1: 3, D2: 200, Lambda: 900}, 300}, {dist.NoncentralF{D1: 1e9, D2: 1, Lambda: 5}, 0.02},
+		{dist.NoncentralF{D1: 3, D2: math.Inf(1), Lambda: 5}, 2}, {dist.NoncentralF{D1: 3, D2: 0.1, Lambda: 5}, 1e200},
+		{dist.NoncentralT{Nu: 10, Delta: 1}, 2}, {dist.NoncentralT{Nu: 10, Delta: -1}, 2}, {dist.NoncentralT{Nu: 10, Delta: 8}, 9}, {dist.NoncentralT{Nu: 1e8, Delta: 1}, 0.5},
+	} {
+		if n := testing.AllocsPerRun(20, func() {
+			sink = c.law.CDF(c.x) + c.law.Survival(c.x) + c.law.LogCDF(c.x) + c.law.LogSurvival(c.x) + c.law.Prob(c.x) + c.law.LogProb(c.x)
+		}); n != 0 {
+			t.Errorf("%v at %v: %v allocations", c.law, c.x, n)
+		}
+	}
+}

@@ -26,6 +26,10 @@ const (
 
 // chi2Saddle returns A and B.
 func chi2Saddle(k, lambda, x float64) (a, b float64) {
+	if p := lambda * x; p > 1e-250 && p < 1e250 && k < 1e100 {
+		b = (k/2 + math.Sqrt(k*k/4+p)) / 2
+		return p / (4 * b), b
+	}
 	q := math.Sqrt(lambda) * math.Sqrt(x)
 	b = (k/2 + math.Hypot(k/2, q)) / 2
 	return q / b * (q / 4), b

@@ -17,43 +17,42 @@ import (
 // mixture is used, A < 42, the index of its dominating term.
 const fFew = 42
 
-// fArg is the argument of a noncentral F tail: c = D1 x/D2 and 1+c, with
-// logarithms that hold where c itself leaves the range of float64; beyond 2^±400
-// one of c and 1 is lost beside the other.
+// fArg is the argument of a noncentral F tail: c = D1 x/D2 and 1+c. Where c is beyond 2^±400,
+// and may leave the range of float64, c is scaled by 2^-shift; one of c and 1 is then lost beside the
+// other.
 type fArg struct {
-	c, c1       dd.DD // c and 1+c; c is scaled by 2^-shift, c1 true
-	shift       int
-	logC, logC1 dd.DD
+	c, c1 dd.DD // c1 is +Inf for shift > 0
+	shift int
 }
 
 // newFArg takes x 2^ex.
 func newFArg(d1, d2 float64, x dd.DD, ex int) fArg {
+	if ex == 0 && x.Hi > 0x1p-300 && x.Hi < 0x1p300 {
+		if c := x.MulF(d1).DivF(d2); c.Hi > 0x1p-390 && c.Hi < 0x1p390 {
+			return fArg{c: c, c1: c.AddF(1)}
+		}
+	}
 	fx, e0 := math.Frexp(x.Hi)
 	ex += e0
 	fl := math.Ldexp(x.Lo, -e0)
 	f1, e1 := math.Frexp(d1)
 	f2, e2 := math.Frexp(d2)
-	m := dd.DD{Hi: fx, Lo: fl}.MulF(f1).DivF(f2)
-	e := ex + e1 - e2
-	g := fArg{c: m, shift: e}
-	if e > -400 && e < 400 {
-		g.c, g.shift = m.Scale(e), 0
-	}
-	g.logC = dd.Log(m).Add(dd.Ln2.MulF(float64(e)))
-	switch {
+	g := fArg{c: dd.DD{Hi: fx, Lo: fl}.MulF(f1).DivF(f2), shift: ex + e1 - e2}
+	switch e := g.shift; {
 	case e <= -400:
 		g.c1 = dd.From(1)
 	case e >= 400:
-		g.c1, g.logC1 = dd.From(math.Inf(1)), g.logC
+		g.c1 = dd.From(math.Inf(1))
 	default:
+		g.c, g.shift = g.c.Scale(e), 0
 		g.c1 = g.c.AddF(1)
-		if g.c.Hi < 0x1p-60 {
-			g.logC1 = g.c
-		} else {
-			g.logC1 = dd.Log(g.c1)
-		}
 	}
 	return g
+}
+
+// logC returns log c.
+func (g *fArg) logC() dd.DD {
+	return dd.Log(g.c).Add(dd.Ln2.MulF(float64(g.shift)))
 }
 
 // y returns c/(1+c), 0 where it underflows.
@@ -82,10 +81,10 @@ func fMixture(a, b float64, half dd.DD, g *fArg) mixture {
 	m.y, m.p, m.a1 = g.y(), dd.Sum(a, b), dd.Sum(a, 1)
 	switch {
 	case g.shift < 0:
-		m.c, _ = special.BetaTailTiny(da, db, g.logC)
+		m.c, _ = special.BetaTailTiny(da, db, g.logC())
 		m.t0, m.end = m.c, -1
 	case g.shift > 0:
-		m.c, m.t0 = special.BetaTailTiny(db, da, g.logC.Neg())
+		m.c, m.t0 = special.BetaTailTiny(db, da, g.logC().Neg())
 		m.t0.M = m.t0.M.Div(da)
 		m.end = 1
 	default:

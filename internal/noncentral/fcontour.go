@@ -50,8 +50,12 @@ func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64) fPath {
 		l2 = dd.Log(dd.From(rho).Div(g.c))
 	} else {
 		e = u.AddF(-1)
-		l1 = dd.Log(r1).Sub(g.logC1)
-		l2 = dd.Log(dd.From(rho)).Sub(g.logC)
+		l1 = dd.Log(r1)
+		lc := g.logC()
+		if g.shift > 0 {
+			l1 = l1.Sub(lc)
+		}
+		l2 = dd.Log(dd.From(rho)).Sub(lc)
 	}
 	p.u, p.e, p.l1 = u.Float64(), e.Float64(), l1.Float64()
 	A := u.Mul(lam2)
