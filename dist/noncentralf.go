@@ -177,11 +177,11 @@ func (f NoncentralF) LogProb(x float64) float64 {
 		}
 	}
 	k := perX(f.kernel(x), x)
-	if l := k.Log(); l < -0.5 || l > 0.5 || math.IsInf(f.D2, 1) {
+	if l := k.Log(); l < -0.05 || l > 0.05 || math.IsInf(f.D2, 1) {
 		return l
 	}
-	p := noncentral.AtF(f.D1, f.D2, f.Lambda, x)
-	return perX(p.FullKernel(), x).Log()
+	// near 1 an error of some 1e-16 would be large beside the logarithm
+	return perX(noncentral.FKernelFull(f.D1, f.D2, f.Lambda, x), x).Log()
 }
 
 func (f NoncentralF) tailAt(x float64, upper bool) (tail, logTail, hazard float64) {

@@ -191,10 +191,16 @@ func LogDensityTwo(d2, lambda, x float64) (l float64, ok bool) {
 	return v.Sub(half).Add(dd.Log1p(sum)).Float64(), t.Hi < 0x1p-60*sum.Hi || sum.Hi == 0
 }
 
-// FullKernel is Kernel with more than 60 bits where the mixture serves, for logarithms near 0.
-func (p *F) FullKernel() special.Scaled {
-	if p.mixed() {
-		return p.mix.fullKernel()
+// FKernelFull is Kernel with more than 60 bits, for logarithms near 0: the mixture in double-double as long as
+// its dominating index is below kernelFullMax, some 4000 terms at most.
+func FKernelFull(d1, d2, lambda, x float64) special.Scaled {
+	p := AtF(d1, d2, lambda, x)
+	if p.contour && p.path.bigA > kernelFullMax {
+		return p.Kernel()
 	}
-	return p.Kernel()
+	g := newFArg(d1, d2, dd.From(x), 0)
+	m := fMixture(d1/2, d2/2, dd.From(lambda/2), &g)
+	return m.fullKernel()
 }
+
+const kernelFullMax = 1500

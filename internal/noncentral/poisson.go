@@ -103,9 +103,9 @@ func upperSum(d *drops, half, q0 dd.DD) dd.DD {
 	return sum
 }
 
-// kernelSum returns Σ w_j T_j (a+j) over w_0 T_0 a: the density of log X over its
+// kernelSum returns Σ w_j T_j (a+j) over w_0 T_0 a, times 2^-shift: the density of log X over its
 // central value.
-func kernelSum(d *drops, a float64, half dd.DD) dd.DD {
+func kernelSum(d *drops, a float64, half dd.DD) (sum dd.DD, shift int) {
 	t, sum := dd.From(1), dd.From(1)
 	for j := range maxTerms {
 		f := float64(j)
@@ -119,8 +119,11 @@ func kernelSum(d *drops, a float64, half dd.DD) dd.DD {
 		if r.Hi < 0.5 && t.Hi < tiny*sum.Hi {
 			break
 		}
+		if sum.Hi > 0x1p600 {
+			t, sum, shift = t.Scale(-600), sum.Scale(-600), shift+600
+		}
 	}
-	return sum
+	return sum, shift
 }
 
 // dropSum returns Σ w_j T_j over w_0 T_0.
@@ -226,7 +229,12 @@ func (m *mixture) kernel() special.Scaled {
 
 func (m *mixture) fullKernel() special.Scaled {
 	m.first()
-	return m.scaled(kernelSum(&m.drops, m.a, m.half).MulF(m.a))
+	sum, shift := kernelSum(&m.drops, m.a, m.half)
+	k := m.scaled(sum.MulF(m.a))
+	if shift != 0 {
+		k.L = k.L.Add(dd.Ln2.MulF(float64(shift)))
+	}
+	return k
 }
 
 // slope returns Σ w_j T_j/2, the derivative of the upper tail in λ.
