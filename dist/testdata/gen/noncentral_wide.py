@@ -396,7 +396,7 @@ def t_draw():
     nu = random.choice([lograndom(0.05, 0.5), lograndom(1e6, 1e12)])
     delta = random.choice([-1, 1]) * random.choice([lograndom(0.01, 3), lograndom(3, 100), lograndom(100, 1e4)])
     if nu < 1:
-        delta = max(-20, min(20, delta))
+        delta = max(-3, min(3, delta))
     sd = (1 + delta * delta / (2 * nu)) ** 0.5
     x = delta + random.choice([-12, -3, -1, 0.4, 2, 6, 20]) * min(sd, 1 + abs(delta))
     if random.randrange(3) == 0 and abs(delta) < 30:
