@@ -117,7 +117,7 @@
 //	betainc     log           960  4.2e-17  8.3e-16       8.3e-16
 //	betainc     density       480  3.7e-17  9.5e-17       9.9e-17
 //	betainc     logdensity    480  3.7e-17  1.1e-16       1.1e-16
-//	betainc     quantile       21  5.0e-17  1.6e-16       1.9e-16
+//	betainc     quantile       21  2.6e-17  4.6e-17       5.6e-17
 //	chi2_wide   tail           60  4.8e-17  -             1.6e-16
 //	chi2_wide   log           120  4.6e-17  -             2.0e-16
 //	chi2_wide   density        60  4.4e-17  -             9.5e-17
