@@ -308,8 +308,8 @@ func TestStudentizedMoments(t *testing.T) {
 		}
 	}
 	for _, fam := range studentizedFamilies {
-		for _, k := range []int{2, 7, 60} {
-			for _, nu := range []float64{2.5, 9.9, 10.1, 60, 1e7, inf} {
+		for _, k := range []int{2, 9} {
+			for _, nu := range []float64{2.5, 10.1, 1e7, inf} {
 				d := fam.law(k, nu)
 				var m0, m1, m2 float64
 				h := 0.1 / math.Sqrt(float64(k))
@@ -330,13 +330,13 @@ func TestStudentizedMoments(t *testing.T) {
 	}
 }
 
-// TestStudentizedRand compares 2,000 draws with the CDF (Kolmogorov-Smirnov;
+// TestStudentizedRand compares 1,000 draws with the CDF (Kolmogorov-Smirnov;
 // 2.2 is exceeded with probability 1.3e-4 by sqrt(n) D).
 func TestStudentizedRand(t *testing.T) {
 	for _, d := range []fullLaw{StudentizedRange{2, 3}, StudentizedRange{6, 0.4}, StudentizedRange{20, 50}, StudentizedRange{4, math.Inf(1)},
 		MaximumModulus{1, 3}, MaximumModulus{12, 1}, MaximumModulus{5, math.Inf(1)}} {
 		src := rand.NewPCG(11, 12)
-		const n = 2000
+		const n = 1000
 		x := make([]float64, n)
 		for i := range x {
 			x[i] = d.Rand(src)
@@ -356,7 +356,7 @@ func TestStudentizedRand(t *testing.T) {
 // TestStudentizedSweep draws parameters over the whole domain and looks for
 // NaN, tails outside [0, 1], and decreasing CDFs.
 func TestStudentizedSweep(t *testing.T) {
-	n := 3000
+	n := 2000
 	if os.Getenv("SUBSUME_LONG") == "1" {
 		n = 300000
 	}
