@@ -83,8 +83,30 @@
 // Quantiles invert the smaller tail: Newton's iteration for its logarithm over log x, inside a bracket
 // over the ordered floats that is halved when Newton fails to.
 //
-// The regions of the noncentral laws are in internal/noncentral, those of the studentized
-// laws beside their code.
+// The regions of the noncentral laws are in internal/noncentral.
+//
+// # How the laws of the largest are computed
+//
+// StudentizedRange, MaximumModulus and Dunnett are laws of W/s. With v = log s, P(W/s > q) is
+// the integral of the density of v times P(W > q e^v): a positive, log-concave integrand on a lattice in
+// v, walked outwards from its mode. The trapezoidal rule converges exponentially there; the sums over even
+// and odd nodes show its error, and a step that is too long is halved. Small Nu adds its slow end as a geometric series.
+// Both tails and the density have their own sums; the larger tail is the complement.
+//
+//	law at known scale         rule                                                              why
+//	range, k w² < 1e-7         √k (w/√(2π))^(k-1) [1 - w² (k-1)(k+2)/(24 k)]                     two terms are exact
+//	range, w < 0.7             trapezoidal, step 0.7/√k, Φ differences by Gauss-Legendre, cosh   no cancellation
+//	range, w < median          trapezoidal, lower tail over (2Φ(w/2)-1)^(k-1)                    no underflow
+//	range, w > median          trapezoidal, upper tail over exp(-w²/4), Mills' ratios, x^n - y^n as a positive sum
+//	modulus                    (2Φ(w)-1)^k by log1p and expm1                                    closed form
+//	Dunnett, inside            trapezoidal over the common normal from the mode                  log-concave
+//	Dunnett, outside           trapezoidal around λ times each limit                             where Z₀ is when Zᵢ is out
+//	Dunnett, far               sum of the tails                                                  no two values are out
+//
+// (Pearson and Hartley, Biometrika 32, 1942, for the range; Dunnett and Sobel, Biometrika 42, 1955;
+// Goodwin, Proc. Camb. Phil. Soc. 45, 1949, for the rule; Prékopa 1973 for the concavity.) A Rectangle
+// of the multivariate t is integrated in the same way where its correlations are products, by one more integral for any three values,
+// and by a randomized lattice rule beyond (Genz 1992; Genz and Bretz 2009).
 //
 // # Accuracy
 //
