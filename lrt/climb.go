@@ -345,10 +345,32 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 	if haveInfo {
 		s.info, s.taken = info, p.far(s.u, uInfo, info)
 	}
+	if j := p.beyondResolution(u0, &s); j >= 0 {
+		s.edge, s.escaped, s.rising = nil, []int{j}, true
+	}
 	if !s.converged && len(s.edge)+len(s.escaped) == 0 {
 		s.walls = p.blocked(&s, r)
 	}
 	return s
+}
+
+// beyondResolution finds a likelihood that grew sharper than the numbers can
+// tell: a standard error of a few units in the last place of its estimate. It
+// only looks so because rounding stops it; the coordinate that shrank most is to
+// blame. −1: none.
+func (p *problem) beyondResolution(u0 []float64, s *summit) int {
+	sharp := false
+	for j, l := range p.co.links {
+		a := math.Abs(s.u[j])
+		sharp = sharp || l.kind == linkIdentity && a > 0 && p.scale[j] < 64*(math.Nextafter(a, inf)-a) && s.info != nil
+	}
+	worst, at := 8.0, -1
+	for j, l := range p.co.links {
+		if d := math.Abs(s.u[j] - u0[j]); sharp && l.kind != linkIdentity && d > worst {
+			worst, at = d, j
+		}
+	}
+	return at
 }
 
 // rescale takes the unit of difference steps from the curvature.
@@ -410,14 +432,13 @@ func (p *problem) running(u0 []float64, s *summit, edges bool) bool {
 		case linkAbove, linkBelow:
 			toEdge = s.g[j] < 0 && d < math.Log(edgeRatio)
 			toInfinity = d > 100 && s.g[j] > 0 || !edges && d < -80
-			// Rising at a rate that stays the same over eleven decades: without end,
-			// whatever rounding makes of it further on. (A start that was merely far
-			// off has a rate that fades.)
+			// Rising at a rate that stays the same over eleven decades from a start
+			// that the model gave: without end, whatever rounding makes of it further on.
 			farOff := 25.0
 			if d < 0 {
 				farOff = 16 // beyond the four decades of a first climb
 			}
-			if d > 6 || d < -6 && !edges {
+			if p.ev.core.start != nil && (d > 6 || d < -6 && !edges) {
 				if s.marks == nil {
 					s.marks = make([][]mark, len(s.u))
 				}

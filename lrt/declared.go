@@ -416,7 +416,7 @@ func (d *Declared) dress(ev *evaluator, q *peak, keep bool) (Fit, error) {
 	if err != nil {
 		return Fit{}, err
 	}
-	fit := Fit{N: d.core.n, Dim: free.m, LogLikelihood: q.f, Deviance: nan,
+	fit := Fit{N: d.core.n, Dim: free.m, LogLikelihood: q.f, Deviance: nan, Criterion: d.core.criterion,
 		Estimate: append([]float64(nil), theta...), detail: &detail{d.frame, &peak{summit: summit{f: q.f}, x: q.x, held: q.held, flat: q.flat, loss: q.loss, eq: q.eq}}}
 	if keep {
 		fit.detail.peak.p = q.p

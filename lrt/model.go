@@ -55,6 +55,8 @@ type Model[D any] struct {
 	// Pivotal says that the null law of λ is free of nuisance parameters.
 	Pivotal func(restricted, full *Declared) bool
 
+	// Criterion says what LogLikelihood is; zero: the full likelihood.
+	Criterion Criterion
 	// Budget is the largest number of evaluations of the log likelihood in one
 	// fit; 0: 20,000 + 2,000 for each parameter.
 	Budget int
@@ -125,21 +127,22 @@ type core struct {
 	obs    Observations
 	data   any
 
-	logLik   func(theta []float64) float64
-	each     func(theta, each []float64)
-	gradient func(theta, g []float64)
-	hessian  func(theta, h []float64)
-	expected func(theta, info []float64)
-	start    func() []float64
-	closed   func(data any) ([]float64, error)
-	closedAt func(s *Declared) ([]float64, bool)
-	exact    func(r, f *Declared, p Pair) (Test, error)
-	factor   func(r, f *Declared, p Pair) (float64, error)
-	pivotal  func(r, f *Declared) bool
-	simulate func(theta []float64, src rand.Source) (*core, error)
-	budget   int
-	starts   int
-	drawn    bool // simulated data: the model's derivatives were checked on the first
+	logLik    func(theta []float64) float64
+	each      func(theta, each []float64)
+	gradient  func(theta, g []float64)
+	hessian   func(theta, h []float64)
+	expected  func(theta, info []float64)
+	start     func() []float64
+	closed    func(data any) ([]float64, error)
+	closedAt  func(s *Declared) ([]float64, bool)
+	exact     func(r, f *Declared, p Pair) (Test, error)
+	factor    func(r, f *Declared, p Pair) (float64, error)
+	pivotal   func(r, f *Declared) bool
+	simulate  func(theta []float64, src rand.Source) (*core, error)
+	criterion Criterion
+	budget    int
+	starts    int
+	drawn     bool // simulated data: the model's derivatives were checked on the first
 }
 
 // Bind joins a declared model to a sample. Every space of a comparison must be
@@ -171,7 +174,7 @@ func Bind[D any](m Model[D], s Sample[D]) (*Declared, error) {
 
 func bindCore[D any](m Model[D], s Sample[D], id *byte) *core {
 	d := s.Value
-	c := &core{name: m.Name, params: m.Params, model: id, n: s.N, obs: s.obs, data: d, budget: m.Budget, starts: m.Starts}
+	c := &core{name: m.Name, params: m.Params, model: id, n: s.N, obs: s.obs, data: d, criterion: m.Criterion, budget: m.Budget, starts: m.Starts}
 	for _, p := range m.Params {
 		c.names = append(c.names, p.Name)
 	}

@@ -209,3 +209,52 @@ func TestWeibullPivotal(t *testing.T) {
 		t.Errorf("bootstrap %g, χ² %g", p.P, r.ChiSquared.P)
 	}
 }
+
+// Gear diameters (NIST/SEMATECH e-Handbook 1.3.5.7): Bartlett's test.
+func TestPublishedGear(t *testing.T) {
+	f := load(t, "variances-gear")
+	y, batch := f.column(t, "y"), f.column(t, "batch")
+	s := make(Samples, 10)
+	for i, v := range y {
+		s[int(batch[i])-1] = append(s[int(batch[i])-1], v)
+	}
+	d, err := ResidualVariances(s)
+	full := mustSpace(t, d, err)
+	r, err := Compare(bg, mustRestrict(t, full, Equate(Names("sd", 10)...)), full, &Settings{References: []Reference{Bartlett{}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "−2 log λ", r.Statistic, f.exact(t, "bartlett_uncorrected")[0], 1e-12)
+	near(t, "corrected", r.Others[0].Statistic, f.exact(t, "bartlett_chi2")[0], 1e-12)
+	near(t, "p", r.Others[0].P, f.exact(t, "bartlett_p")[0], 1e-12)
+	near(t, "df", r.Pair.DF, f.exact(t, "bartlett_df")[0], 0)
+	// Residual and full likelihoods are never compared with each other.
+	n, err := NormalSamples(s)
+	other := mustSpace(t, n, err)
+	if _, err := Compare(bg, full, other, nil); !errors.Is(err, ErrDifferentObservations) {
+		t.Errorf("%v", err)
+	}
+}
+
+func TestResidualVarianceRatio(t *testing.T) {
+	g := normalGroups(9, 2, 0, 1, 3)
+	d, err := ResidualVariances(g.samples(false))
+	full := mustSpace(t, d, err)
+	r, err := Compare(bg, mustRestrict(t, full, Equate("sd[1]", "sd[2]")), full, &Settings{Seed: 1, References: []Reference{Bootstrap{Draws: 799}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if sim := r.Others[0].Simulation; r.Exact.P < sim.Lower || r.Exact.P > sim.Upper {
+		t.Errorf("exact %g, simulated %g to %g", r.Exact.P, sim.Lower, sim.Upper)
+	}
+	if _, err := ResidualVariances(Samples{{1, 2}, {3}}); !errors.Is(err, ErrInvalid) {
+		t.Errorf("%v", err)
+	}
+	tied, err := ResidualVariances(Samples{{1, 2}, {3, 3}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := tied.Maximize(bg); !errors.Is(err, ErrUnbounded) {
+		t.Errorf("%v", err)
+	}
+}
