@@ -10,7 +10,7 @@ import (
 var optional = []reflect.Type{
 	reflect.TypeFor[PairFitter](), reflect.TypeFor[Restrictable](), reflect.TypeFor[Nester](),
 	reflect.TypeFor[Improver](), reflect.TypeFor[ExactReferrer](), reflect.TypeFor[Simulator](),
-	reflect.TypeFor[Companion](), reflect.TypeFor[Degrees](),
+	reflect.TypeFor[Companion](), reflect.TypeFor[Degrees](), reflect.TypeFor[Pivot](), reflect.TypeFor[BartlettCorrector](),
 }
 
 // lostInterfaces warns of optional interfaces that a type seems to have by

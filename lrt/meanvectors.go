@@ -7,7 +7,6 @@ import (
 	"math/rand/v2"
 
 	"gonum.org/v1/gonum/mat"
-	"subsume.example/dist"
 )
 
 // MeanVectors are rows of p responses in k groups: multivariate normal with one
@@ -322,25 +321,13 @@ func (s *meanSpace) ReferExact(_ context.Context, c Comparison, _ Pair) (Test, e
 	if !ok {
 		return Test{Why: "an exact law is known against the free mean vectors"}, nil
 	}
-	root := 1.0
-	if d := p*p + q*q - 5; d > 0 && p*q > 2 {
-		root = math.Sqrt((p*p*q*q - 4) / d)
-	}
-	d1 := p * q
-	d2 := (e-(p-q+1)/2)*root - (p*q-2)/2
-	if !(d2 > 0) {
+	t, ok := raoF(logL, p, q, e)
+	if !ok {
 		return Test{Why: "too few degrees of freedom for Rao's F"}, nil
 	}
-	x := math.Expm1(-logL/root) * d2 / d1
-	t := Test{Kind: Exact, Name: "F of Wilks' Λ", Statistic: x, Law: dist.F{D1: d1, D2: d2},
-		Why: "Rao's F of Wilks' Λ is exact for at most two responses or two degrees of freedom between means"}
 	if q == 1 {
 		t.Name, t.Why = "F of Hotelling's T²", "T² is (n − k) times a monotone function of λ, and its multiple has an F law for normal rows"
 	}
-	if math.Min(p, q) > 2 {
-		t.Kind, t.Why = Approximate, fmt.Sprintf("Rao's F (1951) is approximate for %g responses and %g degrees of freedom between means; λ is pivotal, so a Bootstrap calibrates it exactly", p, q)
-	}
-	t.P, t.LogP = tails(t.Law.Survival(x), x, t.Law.LogSurvival)
 	return t, nil
 }
 

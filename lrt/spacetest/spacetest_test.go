@@ -50,7 +50,7 @@ func TestCheckDeclared(t *testing.T) {
 	if len(r.errs) == 0 || !strings.Contains(strings.Join(r.errs, "\n"), "NestedIn") {
 		t.Errorf("swapped spaces pass: %q", r.errs)
 	}
-	if !strings.Contains(strings.Join(r.logs, "\n"), "PairFitter, Restrictable, Nester, Improver, ") {
+	if !strings.Contains(strings.Join(r.logs, "\n"), "PairFitter, Restrictable, Nester, Improver, ExactReferrer, Simulator, Companion, Pivot, BartlettCorrector") {
 		t.Errorf("interfaces not listed: %q", r.logs)
 	}
 }
