@@ -22,11 +22,45 @@ type weight struct {
 	coef         dd.DD
 }
 
-// pullback returns Vᵀ of a function of the asked coefficients of m, and the sum of its
-// weights at the carrier.
-func (j *joint) pullback(m *Model, ws []weight) (linalg.Vec, dd.DD) {
+// pulled is a function of the asked coefficients as one of the basis: 2^exp c.
+type pulled struct {
+	c linalg.Vec
+	// exp is 0 unless squares of c would leave the range: columns near 1e300 or 1e-300.
+	exp int
+	// carried is the sum of the weights at the carrier, not scaled.
+	carried dd.DD
+}
+
+// scaleOf returns the power of two to take out of a function of the asked coefficients.
+func (j *joint) scaleOf(m *Model, ws []weight) int {
+	top := math.MinInt
+	for _, w := range ws {
+		b := m.cols[w.term]
+		if w.coef.Hi == 0 {
+			continue
+		}
+		e := math.Ilogb(w.coef.Hi)
+		switch g := j.group(b); {
+		case j.basis.powers[g] != nil:
+			e -= (w.column + 1) * j.basis.powers[g].exp
+		case b.dense():
+			e -= j.exp[j.denseColumn(g)+w.column]
+		default:
+			e -= j.scales[g]
+		}
+		top = max(top, e)
+	}
+	if top > -400 && top < 400 || top == math.MinInt {
+		return 0
+	}
+	return top
+}
+
+// pullback returns Vᵀ of a function of the asked coefficients of m.
+func (j *joint) pullback(m *Model, ws []weight) pulled {
 	c := j.gram.NewVec()
 	var carried dd.DD
+	exp := j.scaleOf(m, ws)
 	carrier := m.carrier()
 	add := func(at int, x dd.DD) { c.Set(at, c.At(at).Add(x)) }
 	for _, w := range ws {
@@ -38,18 +72,18 @@ func (j *joint) pullback(m *Model, ws []weight) (linalg.Vec, dd.DD) {
 		}
 		switch p := j.basis.powers[g]; {
 		case p != nil:
-			v := p.inverse()
+			v, back := p.inverse(), -(w.column+1)*p.exp-exp
 			for i := range p.degree {
-				add(at+i, w.coef.Mul(v[w.column+1][i+1]))
+				add(at+i, w.coef.Mul(v[w.column+1][i+1]).Scale(back))
 			}
 		case b.dense():
-			add(at+w.column, w.coef.Scale(-j.exp[j.denseColumn(g)+w.column]))
+			add(at+w.column, w.coef.Scale(-j.exp[j.denseColumn(g)+w.column]-exp))
 		default:
-			add(at+w.column, w.coef.Scale(-j.scales[g]))
+			add(at+w.column, w.coef.Scale(-j.scales[g]-exp))
 		}
 	}
 	if carried.Hi == 0 || !j.shifted {
-		return c, carried
+		return pulled{c, exp, carried}
 	}
 	// What the shifts of the other columns of m moved into the constant.
 	for _, b := range m.cols {
@@ -59,18 +93,18 @@ func (j *joint) pullback(m *Model, ws []weight) (linalg.Vec, dd.DD) {
 		case p != nil:
 			v := p.inverse()
 			for i := range p.degree {
-				add(at+i, carried.Mul(v[0][i+1]))
+				add(at+i, carried.Mul(v[0][i+1]).Scale(-exp))
 			}
 		case b.dense():
 			for k := range b.Names {
 				d := j.denseColumn(g) + k
 				if s := j.shift[d]; s != 0 {
-					add(at+k, carried.MulF(-s).Scale(-j.exp[d]))
+					add(at+k, carried.MulF(-s).Scale(-j.exp[d]-exp))
 				}
 			}
 		}
 	}
-	return c, carried
+	return pulled{c, exp, carried}
 }
 
 // denseColumn returns the number of a group's first dense column.
@@ -84,9 +118,10 @@ func (j *joint) denseColumn(g int) int {
 	return n
 }
 
-// inverse returns V with u^i = Σ_k V[k][i] x^k, u = (x − centre)·2^−exp.
+// inverse returns V with u^i = Σ_k V[k][i] (2^−exp x)^k, u = (x − centre)·2^−exp.
 func (p *powers) inverse() [][]dd.DD {
 	n := p.degree + 1
+	centre := math.Ldexp(p.centre, -p.exp)
 	v := make([][]dd.DD, n)
 	for k := range v {
 		v[k] = make([]dd.DD, n)
@@ -94,11 +129,10 @@ func (p *powers) inverse() [][]dd.DD {
 	v[0][0] = dd.From(1)
 	for i := 1; i < n; i++ {
 		for k := 0; k <= i; k++ {
-			x := v[k][i-1].MulF(-p.centre)
+			v[k][i] = v[k][i-1].MulF(-centre)
 			if k > 0 {
-				x = x.Add(v[k-1][i-1])
+				v[k][i] = v[k][i].Add(v[k-1][i-1])
 			}
-			v[k][i] = x.Scale(-p.exp)
 		}
 	}
 	return v
@@ -114,9 +148,9 @@ func (j *joint) functional(m *Model, e lrt.Equation) (linalg.Vec, dd.DD, error) 
 	if err != nil {
 		return linalg.Vec{}, dd.DD{}, err
 	}
-	c, carried := j.pullback(m, ws)
-	v := dd.From(e.Value).Sub(carried.MulF(j.yShift()))
-	return c, v.Scale(-j.yExp()), nil
+	c := j.pullback(m, ws)
+	v := dd.From(e.Value).Sub(c.carried.MulF(j.yShift()))
+	return c.c, v.Scale(-j.yExp() - c.exp), nil
 }
 
 func (m *Model) weights(names []string, coef []float64) ([]weight, error) {
@@ -132,8 +166,12 @@ func (m *Model) weights(names []string, coef []float64) ([]weight, error) {
 }
 
 // asked returns the value of a function of the asked coefficients from its value on the basis.
-func (j *joint) asked(onBasis, carried dd.DD) dd.DD {
-	return onBasis.Scale(j.yExp()).Add(carried.MulF(j.yShift()))
+func (j *joint) asked(onBasis dd.DD, c pulled) float64 {
+	x := onBasis.Scale(j.yExp() + c.exp)
+	if math.IsInf(x.Hi, 0) {
+		return x.Hi
+	}
+	return x.Add(c.carried.MulF(j.yShift())).Float64()
 }
 
 // mappable reports whether asked coefficients can be read off the basis with

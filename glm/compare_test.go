@@ -189,6 +189,66 @@ func TestHugeAndTiny(t *testing.T) {
 	}
 }
 
+// TestHugeAndTinyColumns: columns near the ends of the float64 range keep the digits
+// of their slopes, standard errors and covariances, and t where neither can be a float64.
+func TestHugeAndTinyColumns(t *testing.T) {
+	p := field(5, 40)
+	square := glm.Powers{Field: "x", Degree: 2}
+	fit := func(sy, sx float64, terms ...glm.Term) *glm.Fit {
+		q := p
+		q.x, q.y = make([]float64, len(p.x)), make([]float64, len(p.y))
+		for i := range p.y {
+			q.x[i], q.y[i] = p.x[i]*sx, p.y[i]*sy
+		}
+		f, err := model(t, q.data(t), nil, terms...).Fit(context.Background(), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return f
+	}
+	for _, c := range []struct {
+		sy, sx float64
+		terms  []glm.Term
+	}{
+		{1, 0x1p1000, []glm.Term{one, cx, fa}}, {1, 0x1p-1000, []glm.Term{one, cx, fa}}, {0x1p-1000, 0x1p-1020, []glm.Term{one, fa, cx}},
+		{0x1p1000, 0x1p1000, []glm.Term{cx}}, {1, 0x1p500, []glm.Term{one, square}}, {1, 0x1p-500, []glm.Term{square, one}},
+		{0x1p1000, 0x1p-1000, []glm.Term{one, cx, fa}}, {0x1p-1000, 0x1p1000, []glm.Term{one, cx, fa}},
+	} {
+		got, want := fit(c.sy, c.sx, c.terms...), fit(1, 1, c.terms...)
+		for i, w := range want.Coefficients {
+			g, scale := got.Coefficients[i], c.sy
+			switch w.Name {
+			case "x^2":
+				scale = scale / c.sx / c.sx
+			case "x", "x^1":
+				scale /= c.sx
+			}
+			if w.Aliased {
+				continue
+			}
+			if relative(g.T, w.T) > 1e-13 || relative(g.P, w.P) > 1e-12 {
+				t.Errorf("scales %g, %g: %s has t = %g, p = %g, want %g, %g", c.sy, c.sx, g.Name, g.T, g.P, w.T, w.P)
+			}
+			if math.IsInf(scale, 0) || scale < 0x1p-1000 {
+				if !hasCode(got.Warnings, "coefficient-range") {
+					t.Errorf("scales %g, %g: %s = %g without a warning", c.sy, c.sx, g.Name, g.Estimate)
+				}
+				continue
+			}
+			if relative(g.Estimate/scale, w.Estimate) > 1e-14 || relative(g.SE/scale, w.SE) > 1e-14 {
+				t.Errorf("scales %g, %g: %s = %g ± %g, want %g ± %g times %g", c.sy, c.sx, g.Name, g.Estimate, g.SE, w.Estimate, w.SE, scale)
+			}
+		}
+	}
+	// A covariance of a slope near 1e-301 and a constant near 1.
+	x, k := []glm.Weight{{Name: "x", Coef: 1}}, []glm.Weight{{Name: "constant", Coef: 1}}
+	got, err := fit(1, 0x1p1000, one, cx).Covariance(x, k)
+	want, err2 := fit(1, 1, one, cx).Covariance(x, k)
+	if err != nil || err2 != nil || relative(got*0x1p1000, want) > 1e-14 {
+		t.Errorf("covariance %g, want %g·2^-1000 (%v, %v)", got, want, err, err2)
+	}
+}
+
 func hasCode(ws []lrt.Warning, code string) bool {
 	return slices.ContainsFunc(ws, func(w lrt.Warning) bool { return w.Code == code })
 }

@@ -169,18 +169,13 @@ func (f *Fit) summarize() error {
 	if f.f.Eliminated() {
 		f.followTerms()
 	}
-	var beyond []string
 	for t, b := range f.Model.cols {
 		for i := range b.Names {
-			c := f.coefficient(t, b.shown(i))
-			if v := c.Estimate; math.IsNaN(v) || math.IsInf(v, 0) {
-				beyond = append(beyond, c.Name)
-			}
-			f.Coefficients = append(f.Coefficients, c)
+			f.Coefficients = append(f.Coefficients, f.coefficient(t, b.shown(i)))
 		}
 	}
-	if len(beyond) > 0 {
-		f.Warnings = append(f.Warnings, lrt.Warning{Code: "coefficient-range", Text: "coefficients outside the floating-point range in the units of their fields: " + list(beyond)})
+	if w, ok := outOfRange(f.Coefficients); ok {
+		f.Warnings = append(f.Warnings, w)
 	}
 	if len(f.Coefficients) > maxReported && f.f.Rank > 0 {
 		f.Warnings = append(f.Warnings, lrt.Warning{Code: "standard-errors-on-request", Text: fmt.Sprintf(
@@ -244,9 +239,9 @@ type Estimate struct {
 }
 
 // half returns the function on the factor, restrictions taken off.
-func (f *Fit) half(ws []weight) (c linalg.Vec, carried dd.DD, h linalg.Half, bad float64, worst int) {
-	c, carried = f.j.pullback(f.Model, ws)
-	h, bad, worst = f.f.Half(c)
+func (f *Fit) half(ws []weight) (c pulled, h linalg.Half, bad float64, worst int) {
+	c = f.j.pullback(f.Model, ws)
+	h, bad, worst = f.f.Half(c.c)
 	if f.v.restr != nil {
 		all := h.Dot(h).Float64()
 		h, _ = f.v.restr.reduce(h)
@@ -254,49 +249,53 @@ func (f *Fit) half(ws []weight) (c linalg.Vec, carried dd.DD, h linalg.Half, bad
 			h = h.Scale(dd.DD{})
 		}
 	}
-	return c, carried, h, bad, worst
+	return c, h, bad, worst
 }
 
-func (r *reading) estimate(ws []weight, se bool) (Estimate, float64, int) {
+// covariance returns the covariance of two functions of the coefficients; the error
+// wraps ErrNotEstimable.
+func (f *Fit) covariance(x, y []weight) (float64, error) {
+	cx, hx, bx, wx := f.half(x)
+	cy, hy, by, wy := f.half(y)
+	if bx > estimable || by > estimable {
+		return math.NaN(), fmt.Errorf("glm: %w: it involves %s", ErrNotEstimable, f.j.columnName(max(wx, wy)))
+	}
+	return math.Ldexp(hx.Dot(hy).Float64()*f.reading.variance, 2*f.j.yExp()+cx.exp+cy.exp), nil
+}
+
+func (r *reading) estimate(ws []weight, spread bool) (Estimate, float64, int) {
 	f := r.f
-	var c linalg.Vec
-	var carried dd.DD
+	var c pulled
 	var h linalg.Half
 	var bad float64
 	worst := -1
 	e := Estimate{SE: math.NaN(), T: math.NaN(), P: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
-	if se {
-		c, carried, h, bad, worst = f.half(ws)
-		e.SE = math.Ldexp(math.Sqrt(math.Max(h.Dot(h).Float64(), 0)*r.variance), f.j.yExp())
+	var se float64 // on the scale of the function and the joint
+	if spread {
+		c, h, bad, worst = f.half(ws)
+		se = math.Sqrt(math.Max(h.Dot(h).Float64(), 0) * r.variance)
+		e.SE = math.Ldexp(se, f.j.yExp()+c.exp)
 	} else {
-		c, carried = f.j.pullback(f.Model, ws)
+		c = f.j.pullback(f.Model, ws)
 	}
 	var x dd.DD
-	for i := range c.Len() {
-		if v := c.At(i); v.Hi != 0 {
+	for i := range c.c.Len() {
+		if v := c.c.At(i); v.Hi != 0 {
 			x = x.Add(v.Mul(f.v.beta.At(i)))
 		}
 	}
-	if e.Value = f.j.asked(x, carried).Float64(); math.IsNaN(e.Value) {
-		e.Value = math.Ldexp(x.Float64(), f.j.yExp()) + carried.Float64()*f.j.yShift()
-	}
+	e.Value = f.j.asked(x, c)
 	if math.IsNaN(e.SE) {
 		return e, bad, worst
 	}
 	e.Lower, e.Upper = e.Value-r.quantile*e.SE, e.Value+r.quantile*e.SE
-	e.T = e.Value / e.SE
-	l := lrt.Linear{RankB: 1, RankE1: f.DFError, Numerator: e.T * e.T, Denominator: float64(f.DFError), M: float64(f.N)}
-	if f.j.opt.KnownVariance > 0 {
-		l.Known = 1
+	if e.T = e.Value / e.SE; e.SE < 0x1p-1022 || math.IsInf(e.SE, 0) || math.IsInf(e.Value, 0) {
+		e.T = x.Add(c.carried.MulF(f.j.yShift()).Scale(-f.j.yExp()-c.exp)).Float64() / se
 	}
-	switch {
-	case e.SE == 0 && (e.Value == 0 || r.variance > 0): // nil, or fixed by the restrictions
-		e.T, e.P = math.NaN(), math.NaN()
-	case e.SE == 0:
-		e.P = 0
-	default:
-		_, e.P, _ = l.F()
+	if se == 0 && r.variance > 0 { // the restrictions fix it
+		e.T = math.NaN()
 	}
+	f.test(&e)
 	return e, bad, worst
 }
 
@@ -413,12 +412,7 @@ func (f *Fit) Covariance(a, b []Weight) (float64, error) {
 	if err != nil {
 		return math.NaN(), err
 	}
-	_, _, hx, bx, wx := f.half(x)
-	_, _, hy, by, wy := f.half(y)
-	if bx > estimable || by > estimable {
-		return math.NaN(), fmt.Errorf("glm: %w: it involves %s", ErrNotEstimable, f.j.columnName(max(wx, wy)))
-	}
-	return math.Ldexp(hx.Dot(hy).Float64()*f.reading.variance, 2*f.j.yExp()), nil
+	return f.covariance(x, y)
 }
 
 // Coefficient returns the coefficient of a name.

@@ -161,18 +161,19 @@ func (r *RowMeans) Estimate(w []float64) (Estimate, error) {
 	}
 	if o := offset.Float64(); o != 0 {
 		e.Value, e.Lower, e.Upper = e.Value+o, e.Lower+o, e.Upper+o
+		e.T = e.Value / e.SE
 		r.f.test(&e)
 	}
 	return e, nil
 }
 
-// test fills in T and P of an estimate whose value was changed.
+// test fills in P of an estimate from its T.
 func (f *Fit) test(e *Estimate) {
-	e.T, e.P = e.Value/e.SE, math.NaN()
+	e.P = math.NaN()
 	if math.IsNaN(e.T) {
 		return
 	}
-	if e.SE == 0 {
+	if math.IsInf(e.T, 0) {
 		e.P = 0
 		return
 	}
@@ -193,12 +194,7 @@ func (r *RowMeans) Covariance(a, b []float64) (float64, error) {
 	if err != nil {
 		return math.NaN(), err
 	}
-	_, _, hx, bx, wx := r.f.half(x)
-	_, _, hy, by, wy := r.f.half(y)
-	if bx > estimable || by > estimable {
-		return math.NaN(), fmt.Errorf("glm: %w: it involves %s", ErrNotEstimable, r.f.j.columnName(max(wx, wy)))
-	}
-	return math.Ldexp(hx.Dot(hy).Float64()*r.f.reading.variance, 2*r.f.j.yExp()), nil
+	return r.f.covariance(x, y)
 }
 
 // Equation returns Σ w[i]·mean(row i) = value as an equation between coefficients of

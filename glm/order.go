@@ -96,7 +96,7 @@ func (j *joint) forward(m *Model, gamma linalg.Vec) linalg.Vec {
 				for i := range p.degree {
 					x = x.Add(v[k+1][i+1].Mul(gamma.At(at + i)))
 				}
-				out.Set(at+k, x)
+				out.Set(at+k, x.Scale(-(k+1)*p.exp))
 				carried = carried.Add(v[0][k+1].Mul(gamma.At(at + k)))
 			}
 		case b.dense():

@@ -132,3 +132,18 @@ func (j *joint) doubtful(f *linalg.Factor) (lrt.Warning, bool) {
 		"in the order of the terms the rank is %d (smallest pivot kept %.3g, largest set aside %.3g, tolerance %.3g), by largest remaining column it is %d",
 		f.Rank, f.SmallestKept, f.LargestAside, j.tol, other)}, true
 }
+
+// outOfRange warns of coefficients that are not zero on the scale of the fit but leave
+// the floating-point range on that of the data: T and P keep their digits.
+func outOfRange(cs []Coefficient) (lrt.Warning, bool) {
+	var names []string
+	for _, c := range cs {
+		if !c.Aliased && (math.IsInf(c.Estimate, 0) || math.IsInf(c.SE, 0) || c.SE < 0x1p-1022 && !math.IsInf(c.T, 0) && !math.IsNaN(c.T)) || math.IsNaN(c.Estimate) {
+			names = append(names, c.Name)
+		}
+	}
+	if len(names) == 0 {
+		return lrt.Warning{}, false
+	}
+	return lrt.Warning{Code: "coefficient-range", Text: "estimates or standard errors are outside the floating-point range (their t is not): " + list(names)}, true
+}
