@@ -74,7 +74,7 @@ func (a *adapted) Observations(response string) lrt.Observations { return a.src.
 func (a *adapted) Windows(ctx context.Context) iter.Seq2[Window, error] {
 	return func(yield func(Window, error) bool) {
 		k := len(a.schema)
-		for w, err := range a.src.Windows(ctx) {
+		for w, err := range windows(ctx, a.src) {
 			if err != nil {
 				yield(Window{}, err)
 				return
@@ -141,7 +141,7 @@ func (f *Fit) ranges(ctx context.Context) ([]span, error) {
 	if len(spans) == 0 {
 		return nil, nil
 	}
-	for w, err := range f.j.src.Windows(ctx) {
+	for w, err := range windows(ctx, f.j.src) {
 		if err != nil {
 			return nil, err
 		}

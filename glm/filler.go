@@ -4,6 +4,7 @@ import (
 	"fmt"
 
 	"subsume.example/internal/linalg"
+	"subsume.example/lrt"
 )
 
 // filler turns windows of a source into blocks of columns on the basis of a joint.
@@ -161,21 +162,38 @@ func (f *filler) fill(w Window, g, at, end int) error {
 	for k := range n {
 		f.lower(c+k, at)
 		hi[k], lo[k] = f.block.Hi[c+k][at:end], f.block.Lo[c+k][at:end]
+		clear(lo[k]) // a term may have nothing to say below hi
 	}
 	if p := f.j.basis.powers[g]; p != nil {
 		p.fill(w, hi, lo)
 		return nil
 	}
-	if err := b.Fill(w, hi, lo); err != nil {
+	if err := b.guarded(func() error { return b.Fill(w, hi, lo) }); err != nil {
 		return b.blame(err)
 	}
+	for k := range n {
+		if len(hi[k]) != end-at || len(lo[k]) != end-at || end > at && (&hi[k][0] != &f.block.Hi[c+k][at] || &lo[k][0] != &f.block.Lo[c+k][at]) {
+			return &TermError{Term: b.name, Err: fmt.Errorf("%w: Fill must write into the slices it is given, not replace them", ErrTerm)}
+		}
+	}
 	return nil
+}
+
+// guarded calls a function of a term; a panic becomes an error, for a pass may be
+// made by goroutines that the caller cannot recover.
+func (b *bound) guarded(call func() error) (err error) {
+	defer func() {
+		if r := recover(); r != nil {
+			err = &TermError{Term: b.name, Err: fmt.Errorf("%w: %v", lrt.ErrPanic, r)}
+		}
+	}()
+	return call()
 }
 
 // index asks a term for its non-zero column in each row.
 func (f *filler) index(w Window, b *bound, idx, at, end int) error {
 	to := f.block.Index[idx][at:end]
-	if err := b.Index(w, to); err != nil {
+	if err := b.guarded(func() error { return b.Index(w, to) }); err != nil {
 		return b.blame(err)
 	}
 	for i, l := range to {
@@ -186,7 +204,9 @@ func (f *filler) index(w Window, b *bound, idx, at, end int) error {
 	if b.Value == nil {
 		return nil
 	}
-	if err := b.Value(w, f.block.VHi[idx][at:end], f.block.VLo[idx][at:end]); err != nil {
+	hi, lo := f.block.VHi[idx][at:end], f.block.VLo[idx][at:end]
+	clear(lo)
+	if err := b.guarded(func() error { return b.Value(w, hi, lo) }); err != nil {
 		return b.blame(err)
 	}
 	return nil

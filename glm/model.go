@@ -99,7 +99,7 @@ func Normal(ctx context.Context, src Source, response string, terms []Term, o *O
 	if o != nil {
 		m.opt = *o
 	}
-	if src == nil {
+	if d, ok := src.(*Data); src == nil || ok && d == nil {
 		return nil, &ColumnError{Row: -1, Err: ErrEmpty}
 	}
 	var err error
@@ -163,8 +163,15 @@ func (m *Model) With(ctx context.Context, terms ...Term) (*Model, error) {
 
 // bind makes the columns of a term for a source.
 func bind(ctx context.Context, t Term, src Source) (*bound, error) {
-	c, err := t.Bind(ctx, src)
-	b := &bound{name: t.Name(), Columns: c}
+	b := new(bound)
+	err := b.guarded(func() (err error) {
+		b.name = t.Name()
+		b.Columns, err = t.Bind(ctx, src)
+		return err
+	})
+	if b.name == "" {
+		b.name = fmt.Sprintf("%T", t)
+	}
 	if err != nil {
 		if ctx.Err() != nil {
 			return nil, ctx.Err()

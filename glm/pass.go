@@ -2,6 +2,7 @@ package glm
 
 import (
 	"context"
+	"fmt"
 	"math"
 	"runtime"
 	"sync"
@@ -18,7 +19,9 @@ func (f *filler) blocks(ctx context.Context, visit func(f *filler) error) error 
 			if err := ctx.Err(); err != nil {
 				return err
 			}
-			s.Slice(&f.part, at, min(linalg.BlockRows, s.Len()-at))
+			if err := slice(s, &f.part, at, min(linalg.BlockRows, s.Len()-at)); err != nil {
+				return err
+			}
 			f.block.Rows = 0
 			if err := f.add(f.part); err != nil {
 				return err
@@ -29,7 +32,7 @@ func (f *filler) blocks(ctx context.Context, visit func(f *filler) error) error 
 		}
 		return nil
 	}
-	for w, err := range f.j.src.Windows(ctx) {
+	for w, err := range windows(ctx, f.j.src) {
 		if err != nil {
 			return err
 		}
@@ -105,7 +108,9 @@ func (j *joint) accumulate(ctx context.Context) error {
 	j.gram.Workers = j.workers()
 	f := j.newFiller(size)
 	if ok && sliced.Len() == size { // one block
-		sliced.Slice(&f.part, 0, size)
+		if err := slice(sliced, &f.part, 0, size); err != nil {
+			return err
+		}
 		if err := f.add(f.part); err != nil {
 			return err
 		}
@@ -144,7 +149,10 @@ func (j *joint) accumulate(ctx context.Context) error {
 }
 
 func (j *joint) checkRows() error {
-	if j.rows == 0 || j.n == 0 {
+	if j.rows > 0 && j.n == 0 {
+		return &ColumnError{Column: j.opt.Weights.Field, Row: -1, Err: fmt.Errorf("%w: every weight is 0", ErrEmpty)}
+	}
+	if j.rows == 0 {
 		return &ColumnError{Column: j.response, Row: -1, Err: ErrEmpty}
 	}
 	return nil
@@ -162,7 +170,9 @@ func (j *joint) accumulateParallel(ctx context.Context, src Sliced) error {
 	f := j.newFiller(linalg.BlockRows)
 	// The first block fixes the basis for all.
 	var w Window
-	src.Slice(&w, 0, min(linalg.BlockRows, src.Len()))
+	if err := slice(src, &w, 0, min(linalg.BlockRows, src.Len())); err != nil {
+		return err
+	}
 	if err := f.add(w); err != nil {
 		return err
 	}
@@ -222,7 +232,9 @@ func (f *filler) chunk(ctx context.Context, src Sliced, c int, g *linalg.Gram) e
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		src.Slice(&f.part, at, min(linalg.BlockRows, src.Len()-at))
+		if err := slice(src, &f.part, at, min(linalg.BlockRows, src.Len()-at)); err != nil {
+			return err
+		}
 		f.block.Rows = 0
 		if err := f.add(f.part); err != nil {
 			return err

@@ -258,7 +258,7 @@ const maxLevels = 1 << 20
 func distinct(ctx context.Context, src Source, at int, field Field) ([]string, map[dd.DD]int32, error) {
 	codes := make(map[dd.DD]int32)
 	var values []dd.DD
-	for w, err := range src.Windows(ctx) {
+	for w, err := range windows(ctx, src) {
 		if err != nil {
 			return nil, nil, err
 		}
@@ -297,7 +297,9 @@ type Cross []Term
 func (c Cross) Name() string {
 	names := make([]string, len(c))
 	for i, t := range c {
-		names[i] = t.Name()
+		if names[i] = "nil"; t != nil {
+			names[i] = t.Name()
+		}
 	}
 	return strings.Join(names, " × ")
 }
@@ -330,7 +332,7 @@ func (c Cross) Bind(ctx context.Context, src Source) (Columns, error) {
 			parts[i] = part{name: t.Field, field: t.Field, key: "covariate " + strconv.Quote(t.Field),
 				number: func(w Window, hi, lo []float64) { copyField(w, f, hi, lo) }}
 		default:
-			err = &TermError{Term: c.Name(), Err: fmt.Errorf("%w: %s is neither a Factor nor a Covariate", ErrTerm, t.Name())}
+			err = &TermError{Term: c.Name(), Err: fmt.Errorf("%w: part %d (%T) is neither a Factor nor a Covariate", ErrTerm, i+1, t)}
 		}
 		if err != nil {
 			return Columns{}, err

@@ -293,7 +293,11 @@ func (j *joint) between(s, b *view) (float64, error) {
 			d.Set(nc+s.rhs, dd.From(-1))
 		}
 	}
-	return math.Max(j.factor.NormSq(d).Float64(), 0), nil
+	n := j.factor.NormSq(d).Float64()
+	if math.IsNaN(n) || math.IsInf(n, 0) {
+		return 0, fmt.Errorf("glm: %w: the distance between %v and %v on the scale of the response", ErrOverflow, s.m, b.m)
+	}
+	return math.Max(n, 0), nil
 }
 
 // fitOf returns the summary of a view.

@@ -26,6 +26,9 @@ func Conclude(ctx context.Context, c Comparison, p Pair, s *Settings) (Result, e
 	}
 	if s != nil {
 		for i, ref := range s.References {
+			if ref == nil {
+				return Result{}, c.fail(fmt.Sprintf("reference %d", i), fmt.Errorf("%w: nil", ErrInvalid))
+			}
 			t, err := ref.Refer(ctx, c, p, s)
 			if err != nil {
 				return Result{}, c.fail(fmt.Sprintf("reference %d", i), err)

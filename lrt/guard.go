@@ -5,18 +5,19 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"reflect"
 )
 
 // guard checks what can be known before any fit: spaces present, and all of
 // them bound to the same observations.
 func (c Comparison) guard() error {
-	if c.Restricted == nil {
+	if noSpace(c.Restricted) {
 		return &ComparisonError{c.Name, "restricted", fmt.Errorf("%w: no space", ErrInvalid)}
 	}
-	if c.Full == nil {
+	if noSpace(c.Full) {
 		return &ComparisonError{c.Name, "full", fmt.Errorf("%w: no space", ErrInvalid)}
 	}
-	if c.Error != nil && c.Error.Smaller == nil {
+	if c.Error != nil && noSpace(c.Error.Smaller) {
 		return &ComparisonError{c.Name, "error", fmt.Errorf("%w: error pair without its smaller space", ErrInvalid)}
 	}
 	base := c.Restricted.Observations()
@@ -26,8 +27,22 @@ func (c Comparison) guard() error {
 	if c.Error == nil && c.Effects == nil {
 		return nil
 	}
-	_, err := c.Each(func(s Space) (Space, error) { return s, base.Check(s.Observations()) })
+	_, err := c.Each(func(s Space) (Space, error) {
+		if noSpace(s) {
+			return nil, fmt.Errorf("%w: no space", ErrInvalid)
+		}
+		return s, base.Check(s.Observations())
+	})
 	return err
+}
+
+// noSpace reports whether there is no space, a nil pointer included.
+func noSpace(s Space) bool {
+	if s == nil {
+		return true
+	}
+	v := reflect.ValueOf(s)
+	return v.Kind() == reflect.Pointer && v.IsNil()
 }
 
 // fitSeparately fits two spaces that know nothing of each other.
