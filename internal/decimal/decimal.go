@@ -46,6 +46,32 @@ func Scan(b []byte, mark byte) (hi, lo float64, n int, ok bool) {
 		negative = b[0] == '-'
 		i = 1
 	}
+	if len(b) >= 32 {
+		// At most seven digits before the mark and seven after it, no exponent: the common case.
+		w := binary.LittleEndian.Uint64(b[i:]) ^ 0x3030303030303030
+		whole := run(w)
+		m, places, j := join(w, whole), 0, i+whole
+		if whole < 8 && b[j] == mark {
+			w = binary.LittleEndian.Uint64(b[j+1:]) ^ 0x3030303030303030
+			places = run(w)
+			m = m*tens[places] + join(w, places)
+			j += 1 + places
+		}
+		if whole < 8 && places < 8 && whole+places > 0 && b[j]|0x20 != 'e' {
+			x, d := float64(m), pow10[places]
+			hi = x / d
+			if places > 0 {
+				lo = math.FMA(-hi, d, x) / d
+			}
+			if negative {
+				hi, lo = -hi, -lo
+			}
+			if lo == 0 {
+				lo = 0
+			}
+			return hi, lo, j, true
+		}
+	}
 	var m uint64
 	start := i
 	i, m = digits(b, i, m)
@@ -128,21 +154,12 @@ func twoSum(a, b float64) (s, e float64) {
 	return s, (a - (s - t)) + (b - t)
 }
 
-// digits reads decimal digits from b[i:] on, up to eight at once: with the
-// digits as the bytes of a word, the first byte that is none ends them, a shift
-// makes zeros of what follows, and three multiplications join pairs, fours and eights.
+// digits reads decimal digits from b[i:] on, up to eight at once.
 func digits(b []byte, i int, m uint64) (int, uint64) {
 	for i+8 <= len(b) {
 		w := binary.LittleEndian.Uint64(b[i:]) ^ 0x3030303030303030
-		other := (w | (w + 0x7676767676767676)) & 0x8080808080808080
-		n := bits.TrailingZeros64(other) / 8
-		if n == 0 {
-			return i, m
-		}
-		w <<= uint(64 - 8*n)
-		w = w*10 + w>>8
-		w = ((w&0x000000FF000000FF)*0x000F424000000064 + (w>>16&0x000000FF000000FF)*0x0000271000000001) >> 32
-		m = m*tens[n&15] + w
+		n := run(w)
+		m = m*tens[n] + join(w, n)
 		i += n
 		if n < 8 {
 			return i, m
@@ -159,7 +176,21 @@ func digits(b []byte, i int, m uint64) (int, uint64) {
 	return i, m
 }
 
-var tens = [16]uint64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8}
+// run returns how many of the first bytes of the word are below ten, 0 to 8.
+func run(w uint64) int {
+	return bits.TrailingZeros64((w|(w+0x7676767676767676))&0x8080808080808080) >> 3
+}
+
+// join returns the number that the first n bytes of the word are the digits
+// of, n at most 8: a shift makes leading zeros of the rest, and three
+// multiplications join pairs, fours and eights.
+func join(w uint64, n int) uint64 {
+	w <<= uint(64 - 8*n)
+	w = w*10 + w>>8
+	return ((w&0x000000FF000000FF)*0x000F424000000064 + (w>>16&0x000000FF000000FF)*0x0000271000000001) >> 32
+}
+
+var tens = [9]uint64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8}
 
 // exponent reads a signed exponent at b[i:]; j < 0 when there is none or it is huge.
 func exponent(b []byte, i int) (e, j int) {

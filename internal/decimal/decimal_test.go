@@ -30,7 +30,7 @@ func TestParseExact(t *testing.T) {
 		"1000000000000.4", "1000000000000.3", "-1000000000000.25", "0.1234567890123456789", "3.14159265358979323846264338327950288",
 		"0.0000000000000000000001", "0.00000000000000000000012345", "1e22", "1e23", "123456789e22", "1e308", "4.9e-324", "1e-310",
 		"179769313486231570814527423731704356798070567525844996598917476803157260780028538760589558632766878171540458953514382464234321326889464182768467546703537516986049910576551282076245490090389328944075868508455133942304583236903222948165808559332123347747879e-0",
-		"00000000000000000000000000.1", "0e999999", "123456789012345678", "12345678.12345678", "87654321"}
+		"00000000000000000000000000.1", "0e999999", "123456789012345678", "12345678.12345678", "87654321", "-1234567.7654321", "7.", ".7", "-.7"}
 	rng := rand.New(rand.NewPCG(1, 2))
 	for range 20000 {
 		n := 1 + rng.IntN(24)
@@ -137,5 +137,30 @@ func BenchmarkParse(b *testing.B) {
 				_, _ = strconv.ParseFloat(s, 64)
 			}
 		})
+	}
+}
+
+// TestScanInText reads numbers with text after them, which the quick way needs to see.
+func TestScanInText(t *testing.T) {
+	const rest = ";next field, long enough for whole words"
+	for _, s := range []string{"0", "7", "-7", "+12.5", "12.", ".5", "-.5", "1234567", "12345678", "1234567.1234567", "0.0000001", "123.12345678",
+		"1e3", "1.5e3", "1.5E-3", "9999999.9999999", "0000000.1", "12345678901234567890", "9007199254740993"} {
+		for _, after := range []string{rest, "\n" + rest, ":" + rest, "\xa4" + rest} {
+			hi, lo, n, ok := Scan([]byte(s+after), '.')
+			if !ok {
+				if _, _, m, alone := Scan([]byte(s), '.'); alone {
+					t.Errorf("%q is read alone (%d bytes) and not before %q", s, m, after)
+				}
+				continue
+			}
+			if wh, wl := exact(s); n != len(s) || hi != wh || lo != wl {
+				t.Errorf("Scan(%q) = %v, %v, %d, want %v, %v, %d", s+after, hi, lo, n, wh, wl, len(s))
+			}
+		}
+	}
+	for _, s := range []string{".", "-", "+.", "e5", "x", ""} {
+		if _, _, n, ok := Scan([]byte(s+rest), '.'); ok {
+			t.Errorf("Scan(%q) takes %d bytes for a number", s+rest, n)
+		}
 	}
 }
