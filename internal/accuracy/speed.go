@@ -4,7 +4,9 @@ import (
 	"flag"
 	"fmt"
 	"math"
+	"sort"
 	"testing"
+	"time"
 
 	"subsume.example/dist"
 
@@ -90,4 +92,27 @@ func Nanoseconds(f func(float64) float64, x float64, milliseconds int) float64 {
 		best = min(best, float64(r.T.Nanoseconds())/float64(r.N))
 	}
 	return best
+}
+
+// RowTimes returns the times of one upper tail on each row of a table, in nanoseconds, ascending, and the
+// slowest row: of each the best of three batches of eight calls.
+func RowTimes(t Table, rows []Row) (ns []float64, slowest Row) {
+	worst := -1.0
+	for _, r := range rows {
+		d := t.New(r.P)
+		best := math.Inf(1)
+		for range 3 {
+			start := time.Now()
+			for range 8 {
+				d.Survival(r.X)
+			}
+			best = min(best, float64(time.Since(start).Nanoseconds())/8)
+		}
+		if best > worst {
+			worst, slowest = best, r
+		}
+		ns = append(ns, best)
+	}
+	sort.Float64s(ns)
+	return ns, slowest
 }

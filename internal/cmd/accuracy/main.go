@@ -74,6 +74,9 @@ func run(out io.Writer, dir string, worst bool, over float64, speed bool) error 
 	w.Flush()
 	if speed {
 		times(out)
+		if err := rowTimes(out, dir); err != nil {
+			return err
+		}
 	}
 	return nil
 }
@@ -124,6 +127,25 @@ func docLines(dir string) (lines []docLine, err error) {
 		return nil, err
 	}
 	return append(lines, docLine{"ncinv", "lambda", accuracy.Summarize(rs)}), nil
+}
+
+// rowTimes prints the median and the slowest time of an upper tail over the rows of each table.
+func rowTimes(out io.Writer, dir string) error {
+	fmt.Fprint(out, "\nUpper tails over the rows of the tables\n\n")
+	w := tabwriter.NewWriter(out, 0, 0, 2, ' ', tabwriter.AlignRight)
+	fmt.Fprintln(w, "table\tmedian ns\tslowest ns\tat\t")
+	for _, t := range accuracy.Tables {
+		rows, err := accuracy.Load(dir, t)
+		if errors.Is(err, fs.ErrNotExist) {
+			continue
+		}
+		if err != nil {
+			return err
+		}
+		ns, slowest := accuracy.RowTimes(t, rows)
+		fmt.Fprintf(w, "%s\t%.0f\t%.0f\t%v x = %.6g\t\n", t.File, ns[len(ns)/2], ns[len(ns)-1], slowest.P, slowest.X)
+	}
+	return w.Flush()
 }
 
 const head = "table\tvalue\trows\tmedian\tmax everyday\tmax\t> 1e-12\tnot finite\t\n"
