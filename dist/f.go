@@ -55,7 +55,13 @@ func (f F) beta(x float64) (X, Y dd.DD) {
 	}
 	p := dd.Prod(f.D1, x)
 	s := p.AddF(d2)
-	return p.DivQuick(s), dd.From(d2).DivQuick(s)
+	inv := 1 / s.Hi
+	return s.Quotient(p, inv), s.Quotient(dd.From(d2), inv)
+}
+
+// moderate reports whether all of the law's numbers lie far inside the floats.
+func (f F) moderate(x float64) bool {
+	return x > 1e-70 && x < 1e70 && f.D1 > 1e-70 && f.D1 < 1e70 && f.D2 > 1e-70 && f.D2 < 1e70
 }
 
 // cut limits finite degrees of freedom to 1e150, where the law is its limit to all digits but no
@@ -69,6 +75,11 @@ const tinyOdds = 0x1p-800
 func (f F) tail(x float64) centralTail {
 	if math.IsInf(f.D2, 1) {
 		return chiTail(f.D1, f.scaleChi(x), x)
+	}
+	if f.moderate(x) {
+		X, Y := f.beta(x)
+		t, upper := special.BetaTail(half(f.D1), half(f.D2), X, Y)
+		return centralTail{t, upper}
 	}
 	f = f.cut()
 	a, b := half(f.D1), half(f.D2)

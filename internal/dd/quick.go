@@ -88,3 +88,12 @@ func (a DD) DivQuick(b DD) DD {
 	h := q + r
 	return DD{h, r - (h - q)}
 }
+
+// Quotient returns b / a with relative error below 2^-99, given inv = 1/a.Hi rounded: it saves
+// divisions where several quotients share a divisor.
+func (a DD) Quotient(b DD, inv float64) DD {
+	q := float64(b.Hi * inv)
+	r := (math.FMA(-q, a.Hi, b.Hi) + (b.Lo - float64(q*a.Lo))) * inv
+	h := q + r
+	return DD{h, r - (h - q)}
+}

@@ -33,6 +33,22 @@ func TestQuick(t *testing.T) {
 	}
 }
 
+// TestQuotients compares the quick quotients with the full one.
+func TestQuotients(t *testing.T) {
+	r := rand.New(rand.NewPCG(4, 5))
+	for range 100000 {
+		a := DD{r.Float64() + 0.1, (r.Float64() - 0.5) * 0x1p-54}
+		h := r.Float64() * 10
+		b := DD{h, h * (r.Float64() - 0.5) * 0x1p-53}
+		w := b.Div(a)
+		for name, v := range map[string]DD{"DivQuick": b.DivQuick(a), "Quotient": a.Quotient(b, 1/a.Hi)} {
+			if e := math.Abs(v.Sub(w).Hi); e > 0x1p-99*w.Hi {
+				t.Fatalf("%s(%v, %v): error 2^%.1f", name, b, a, math.Log2(e/w.Hi))
+			}
+		}
+	}
+}
+
 func BenchmarkQuick(b *testing.B) {
 	x := DD{0.7312, 1e-18}
 	b.Run("Exp", func(b *testing.B) {
