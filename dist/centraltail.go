@@ -35,8 +35,8 @@ func (t centralTail) log(upper bool) float64 {
 // hazard density/tail, as invertible wants it.
 func (t centralTail) eval(upper bool, density special.Scaled) (tail, logTail, hazard float64) {
 	tail = t.value(upper)
-	if tail >= tinyTail {
-		return tail, 0, density.Float64() / tail
+	if d := density.Float64(); tail >= tinyTail && d > 1e-290 && d < 1e290 {
+		return tail, 0, d / tail
 	}
 	logTail = t.log(upper)
 	return tail, logTail, math.Exp(density.Log() - logTail)
@@ -44,7 +44,7 @@ func (t centralTail) eval(upper bool, density special.Scaled) (tail, logTail, ha
 
 // perX divides a density of log X by x, which makes it the density of X.
 func perX(k special.Scaled, x float64) special.Scaled {
-	if x > 1e-200 && x < 1e200 {
+	if q := k.M.Hi / x; x > 1e-200 && x < 1e200 && q > 1e-270 && q < 1e270 {
 		k.M = k.M.DivF(x)
 		return k
 	}

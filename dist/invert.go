@@ -120,6 +120,11 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		if next == x || math.Abs(step)*scale < 0x1p-54*math.Abs(x) {
 			break
 		}
+		// What is left after the step is of the order r² (the tails are log-concave in u, with a
+		// curvature of at most slope²): not worth an evaluation.
+		if math.Abs(r) < 1e-10 && r*r < 0x1p-58*slope && orderOf(next) > a && orderOf(next) < b {
+			return next
+		}
 		if uint64(b-a) > width/2 {
 			slow++
 		} else {
