@@ -124,12 +124,12 @@
 //	chi2        log          1800  4.4e-17  3.2e-16       7.3e-16
 //	chi2        density       900  3.4e-17  1.0e-16       1.1e-16
 //	chi2        logdensity    900  3.6e-17  9.5e-17       1.1e-16
-//	chi2        quantile       54  4.3e-17  3.3e-16       4.0e-16
+//	chi2        quantile       54  5.2e-17  3.3e-16       4.0e-16
 //	f           tail          900  3.9e-17  3.1e-16       4.6e-16
 //	f           log          1800  3.9e-17  5.1e-16       5.6e-16
 //	f           density       900  3.7e-17  1.0e-16       1.0e-16
 //	f           logdensity    900  3.8e-17  1.1e-16       1.1e-16
-//	f           quantile       41  4.4e-17  2.8e-16       2.8e-16
+//	f           quantile       41  5.7e-17  2.8e-16       2.8e-16
 //	t           tail          239  3.1e-17  9.3e-17       1.1e-16
 //	t           log           478  3.3e-17  1.0e-16       1.1e-16
 //	t           density       239  3.8e-17  9.5e-17       9.5e-17
@@ -165,7 +165,7 @@
 //	ncf         log          3240  4.8e-17  7.4e-16       7.4e-16
 //	ncf         density      1620  5.7e-17  8.0e-16       8.0e-16
 //	ncf         logdensity   1620  3.9e-17  5.0e-15       5.0e-15
-//	ncf         quantile       54  4.7e-17  2.5e-16       3.7e-16
+//	ncf         quantile       54  4.7e-17  2.5e-16       2.4e-15
 //	nct         tail          360  1.3e-16  7.9e-16       7.9e-16
 //	nct         log           720  7.6e-17  1.0e-15       1.0e-15
 //	nct         density       360  1.7e-16  1.5e-15       1.5e-15
