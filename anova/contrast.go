@@ -79,6 +79,17 @@ func (c Contrast) check(k int) error {
 	return nil
 }
 
+// pair reports whether the contrast is a multiple of the difference of two groups.
+func (c Contrast) pair() bool {
+	n := 0
+	for _, w := range c.Weights {
+		if w != 0 {
+			n++
+		}
+	}
+	return n == 2
+}
+
 // wholeWeights returns weights that are the contrast's times a divisor, whole
 // and of sum zero where the contrast is a multiple of such: thirds in binary do
 // not add up to one, and a large common mean must not leak into a contrast.

@@ -159,3 +159,50 @@ func ExampleGroups_AgainstControl() {
 	// Output:
 	// birch − amber [-1 1]
 }
+
+func ExampleGroups_Test_pairs() {
+	// All pairs by the studentized range. The cells have different counts, so that
+	// it errs on the safe side, and the report says so.
+	ctx := context.Background()
+	data, err := readTiles(ctx)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	rows, err := anova.Crossed(ctx, data, "strength", []string{"press", "resin"}, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	table, err := anova.Tabulate(ctx, rows, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	cells, err := anova.Means(ctx, table.Model(), []string{"press", "resin"}, nil, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	pairs, err := cells.Test(ctx, cells.Pairs(), anova.Tukey, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	fmt.Print(pairs)
+	// Output:
+	// Contrasts of strength by press × resin
+	// adjusted: Tukey · tests: 6 · level 95 % · all equal: F = 58.4368 · p = 8.77e-06
+	//
+	// contrast                        estimate         SE          t           p   adjusted p      lower     upper   reading
+	// ──────────────────────────────────────────────────────────────────────────────────────────────────────────────────────
+	// north × birch − north × amber     4.3167   0.984692    4.3838    0.002337     0.01004      1.16334    7.4700   exact
+	// south × amber − north × amber     3.5333   0.880735    4.0118    0.003885     0.01639      0.71291    6.3538   exact
+	// south × birch − north × amber    10.5167   0.823852   12.765     1.337e-06    6.281e-06    7.87840   13.1549   exact
+	// south × amber − north × birch    −0.7833   0.984692   −0.79551   0.4493       0.8546      −3.93666    2.3700   exact
+	// south × birch − north × birch     6.2000   0.934161    6.6370    0.000163     0.0007404    3.20849    9.1915   exact
+	// south × birch − south × amber     6.9833   0.823852    8.4764    2.873e-05    0.0001328    4.34507    9.6216   exact
+	//
+	// - intervals hold at once at 95 % or more for all pairs, by Kramer's approximation: the
+	//   differences have different variances
+}

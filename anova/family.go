@@ -24,6 +24,11 @@ const (
 	// Scheffe holds for every contrast of the groups, also for those that the data
 	// suggested (Scheffé 1953).
 	Scheffe
+	// Tukey is for differences of pairs, by the studentized range over all pairs of
+	// groups: exact where all differences have one variance, otherwise by Kramer's
+	// approximation, which errs on the safe side for independent means. The family
+	// says which.
+	Tukey
 	// Unadjusted holds for each contrast by itself only.
 	Unadjusted
 )
@@ -37,6 +42,8 @@ func (m Method) String() string {
 		return "Holm"
 	case Scheffe:
 		return "Scheffé"
+	case Tukey:
+		return "Tukey"
 	case Unadjusted:
 		return "unadjusted"
 	}
@@ -52,6 +59,8 @@ type Family struct {
 	lines     []ContrastResult
 	all       Row // all groups equal
 	dimension float64
+	// approximate: the method is not exact here.
+	approximate bool
 }
 
 // ContrastResult is what became of a contrast.
@@ -91,6 +100,9 @@ func (g *Groups) Test(ctx context.Context, cs []Contrast, method Method, s *lrt.
 	for i, c := range cs {
 		if err := c.check(len(g.list)); err != nil {
 			return f, err
+		}
+		if method == Tukey && !c.pair() {
+			return f, &LayoutError{Place: c.Name, Err: fmt.Errorf("%w: Tukey is for differences of two groups; Scheffé holds for any contrast", ErrFamily)}
 		}
 		if slices.ContainsFunc(cs[:i], func(d Contrast) bool { return d.Name == c.Name }) {
 			return f, &LayoutError{Place: c.Name, Err: fmt.Errorf("%w: two contrasts of one name", ErrFamily)}
@@ -273,6 +285,17 @@ func (f *Family) adjust(ctx context.Context) error {
 			}
 			adjusted, logs = append(adjusted, t.P), append(logs, t.LogP)
 		}
+	case Tukey:
+		r := lrt.Pairs{Groups: f.groups.filled(), Balanced: f.groups.balanced()}
+		f.approximate = !r.Balanced
+		half = r.Critical(f.errorDF(), 1-f.level)
+		for _, x := range p {
+			t, e := r.Refer(ctx, x.Comparison, x.Pair, nil)
+			if e != nil {
+				return e
+			}
+			adjusted, logs = append(adjusted, t.P), append(logs, t.LogP)
+		}
 	case Unadjusted:
 		half = f.groups.fit.Critical(f.level)
 		for _, r := range p {
@@ -289,6 +312,45 @@ func (f *Family) adjust(ctx context.Context) error {
 	}
 	return nil
 }
+
+// filled returns the number of groups with observations.
+func (g *Groups) filled() int {
+	n := 0
+	for _, q := range g.list {
+		if q.N > 0 {
+			n++
+		}
+	}
+	return n
+}
+
+// balanced reports whether all differences of two groups have one variance, which is what the
+// studentized range needs to be exact.
+func (g *Groups) balanced() bool {
+	low, high := math.Inf(1), 0.0
+	w := make([]float64, len(g.list))
+	for i := range g.list {
+		if g.list[i].N == 0 {
+			continue
+		}
+		for k := range i {
+			if g.list[k].N == 0 {
+				continue
+			}
+			w[i], w[k] = 1, -1
+			e, err := g.rows.Estimate(g.over(w))
+			w[i], w[k] = 0, 0
+			if err != nil {
+				return false
+			}
+			low, high = math.Min(low, e.SE), math.Max(high, e.SE)
+		}
+	}
+	return high-low <= 1e-9*high
+}
+
+// Approximate reports that the method accounts for the family approximately only.
+func (f Family) Approximate() bool { return f.approximate }
 
 // errorDF returns the degrees of freedom of the error, +Inf where the variance is known.
 func (f *Family) errorDF() float64 {

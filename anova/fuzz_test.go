@@ -66,7 +66,7 @@ func FuzzLayout(f *testing.F) {
 			}
 			reports = append(reports, g.Report())
 			if pairs := g.Pairs(); len(pairs) > 0 {
-				fam, err := g.Test(ctx, pairs, anova.Method(how%4), &lrt.Settings{})
+				fam, err := g.Test(ctx, pairs, anova.Method(how%5), &lrt.Settings{})
 				if err != nil {
 					t.Fatal(err)
 				}

@@ -73,8 +73,8 @@ const maxGrid = 1 << 18
 
 // Means returns the means of the levels of a factor of the model, or of the cells
 // of several of its factors, observed and adjusted: covariates at the values of
-// MeansOptions.At, the other factors averaged over their levels. Level and seed come
-// from s. The model is fitted once more; the rows are passed over three times.
+// MeansOptions.At, the other factors averaged over their levels. The level of
+// intervals comes from s. The model is fitted once more; the rows are passed over three times.
 //
 // Errors are a *LayoutError wrapping ErrLayout for fields that the model does not
 // have as factors or covariates, and those of glm.Model.Fit.

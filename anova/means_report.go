@@ -181,6 +181,11 @@ func (f Family) intervals() string {
 		return "intervals hold at once at " + percent + " (by Bonferroni: Holm has none of its own, so that an interval may hold the null value where the adjusted p is small)"
 	case Scheffe:
 		return fmt.Sprintf("intervals hold at once at %s for every contrast of the groups (%s dimensions)", percent, plain(f.dimension))
+	case Tukey:
+		if f.approximate {
+			return "intervals hold at once at " + percent + " or more for all pairs, by Kramer's approximation: the differences have different variances"
+		}
+		return "intervals hold at once at " + percent + " for all pairs, exactly: the differences have one variance"
 	case Unadjusted:
 		return "intervals hold at " + percent + " each, not at once"
 	}

@@ -142,6 +142,16 @@ func TestPublishedComparisons(t *testing.T) {
 		for i, l := range f.Lines() {
 			against(t, s, "differences_second_minus_first", i, l.Estimate.Value, 1e-12)
 		}
+		f = family(t, g, g.Pairs(), anova.Tukey, 0.95)
+		if f.Approximate() != (id == "mc-package-unequal") {
+			t.Errorf("%s: approximate %v", id, f.Approximate())
+		}
+		for i, l := range f.Lines() {
+			against(t, s, "tukey_half_widths", i, l.Upper-l.Estimate.Value, 1e-9)
+			against(t, s, "tukey_lower", i, l.Lower, 1e-8)
+			against(t, s, "tukey_upper", i, l.Upper, 1e-8)
+			against(t, s, "tukey_adjusted_p", i, l.AdjustedP, 1e-9)
+		}
 		r, _ := tab.Row(group)
 		if a, b := f.AllEqual().Test().Statistic, r.Test().Statistic; math.Abs(a-b) > 1e-12*b {
 			t.Errorf("%s: all equal has F = %g, the table %g", id, a, b)
@@ -193,9 +203,10 @@ func TestMultiplicity(t *testing.T) {
 	bon := family(t, g, pairs, anova.Bonferroni, 0.95)
 	holm := family(t, g, pairs, anova.Holm, 0.95)
 	sch := family(t, g, pairs, anova.Scheffe, 0.95)
+	tuk := family(t, g, pairs, anova.Tukey, 0.95)
 	m := float64(len(pairs))
 	for i, l := range raw.Lines() {
-		for _, f := range []anova.Family{bon, holm, sch} {
+		for _, f := range []anova.Family{bon, holm, sch, tuk} {
 			x := f.Lines()[i]
 			if x.P != l.P || x.Estimate != l.Estimate {
 				t.Errorf("%v changed a raw result", f.Method())
@@ -208,11 +219,14 @@ func TestMultiplicity(t *testing.T) {
 		if want := math.Min(1, m*l.P); math.Abs(b.AdjustedP-want) > 1e-13*want {
 			t.Errorf("Bonferroni %g, want %g", b.AdjustedP, want)
 		}
+		if x := tuk.Lines()[i]; x.AdjustedP > sch.Lines()[i].AdjustedP || x.AdjustedP > b.AdjustedP*(1+1e-12) {
+			t.Errorf("Tukey %g above Scheffé %g or Bonferroni %g", x.AdjustedP, sch.Lines()[i].AdjustedP, b.AdjustedP)
+		}
 		if h.AdjustedP > b.AdjustedP {
 			t.Errorf("Holm %g above Bonferroni %g", h.AdjustedP, b.AdjustedP)
 		}
 		// An interval excludes the null value exactly where the adjusted p is below 1 − level.
-		for _, f := range []anova.Family{bon, sch} {
+		for _, f := range []anova.Family{bon, sch, tuk} {
 			x := f.Lines()[i]
 			if (x.AdjustedP < 0.05) != (x.Lower > 0 || x.Upper < 0) {
 				t.Errorf("%v: %s: adjusted p %g and interval %g to %g disagree", f.Method(), x.Name, x.AdjustedP, x.Lower, x.Upper)
@@ -349,6 +363,7 @@ func TestMeansErrors(t *testing.T) {
 	}
 	_, control := g.AgainstControl("nobody")
 	_, method := g.Test(ctx, g.Pairs(), 77, nil)
+	_, tukey := g.Test(ctx, []anova.Contrast{{Name: "c", Weights: []float64{1, 1, -2}}}, anova.Tukey, nil)
 	_, level := g.Test(ctx, g.Pairs(), anova.Holm, &lrt.Settings{Level: -1})
 	for _, c := range []struct {
 		name string
@@ -369,6 +384,7 @@ func TestMeansErrors(t *testing.T) {
 		{"null", test(anova.Contrast{Name: "c", Weights: []float64{1, -1, 0}, Null: math.Inf(1)}), anova.ErrFamily},
 		{"name", test(anova.Contrast{Weights: []float64{1, -1, 0}}, anova.Contrast{Weights: []float64{1, 0, -1}}), anova.ErrFamily},
 		{"control", control, anova.ErrFamily},
+		{"Tukey of no pair", tukey, anova.ErrFamily},
 		{"method", method, anova.ErrFamily},
 		{"level", level, lrt.ErrInvalid},
 	} {

@@ -386,3 +386,65 @@ func TestWeightsAndOffsets(t *testing.T) {
 		t.Errorf("total about zero %v, want %g", l, sum)
 	}
 }
+
+// TestMixedRows: a comparison of declared models stands in a table beside those
+// of linear ones; it has no sum of squares, and the table no common error.
+func TestMixedRows(t *testing.T) {
+	ctx := context.Background()
+	tr := newTrial(1, 30)
+	d := tr.data(t)
+	cs, err := anova.OneWay(ctx, d, "y", "a", nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	counts := []float64{12, 9, 21}
+	sample := lrt.Observe(counts, len(counts))
+	full, err := lrt.Bind(lrt.Model[[]float64]{Name: "rates",
+		Params: []lrt.Param{{Name: "r1", Upper: math.Inf(1)}, {Name: "r2", Upper: math.Inf(1)}, {Name: "r3", Upper: math.Inf(1)}},
+		LogLikelihood: func(x, r []float64) float64 {
+			l := 0.0
+			for i := range x {
+				l += x[i]*math.Log(r[i]) - r[i]
+			}
+			return l
+		},
+		Start: func(x []float64) []float64 { return []float64{x[0], x[1], x[2]} },
+	}, sample)
+	if err != nil {
+		t.Fatal(err)
+	}
+	equal, err := lrt.Restrict(full, lrt.Equate("r1", "r2", "r3"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	tab, err := anova.Tabulate(ctx, append(cs, lrt.Comparison{Name: "rates", Restricted: equal, Full: full}), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r, _ := tab.Row("rates")
+	// Σ 2 x log(x/mean), the likelihood ratio of equal Poisson rates (common practice, no source).
+	want := 0.0
+	for _, x := range counts {
+		want += 2 * x * math.Log(x/14)
+	}
+	if got := r.Test().Statistic; r.Err() != nil || math.Abs(got-want) > 1e-8*want || !math.IsNaN(r.SS()) {
+		t.Errorf("rates: %v, −2 log λ = %g, want %g; SS %g", r.Err(), got, want, r.SS())
+	}
+	if d1, _ := r.DF(); d1 != 2 {
+		t.Errorf("%g degrees of freedom", d1)
+	}
+	if _, ok := tab.Error(); ok {
+		t.Error("rows of two kinds have no common error")
+	}
+	for _, s := range []string{tab.String(), r.String()} {
+		if !strings.Contains(s, "χ²") || strings.Contains(s, "NaN") {
+			t.Errorf("%s", s)
+		}
+	}
+	if _, err := r.Effect(0); !errors.Is(err, anova.ErrNotARow) {
+		t.Errorf("effect size of a likelihood comparison: %v", err)
+	}
+	if want := "a: F(2, 27) = 10.1508, p = 0.0005159 (exact); y by constant, against y by constant + a"; tab.Rows()[0].String() != want {
+		t.Errorf("%s, want %s", tab.Rows()[0], want)
+	}
+}

@@ -2,6 +2,7 @@ package anova
 
 import (
 	"errors"
+	"fmt"
 	"math"
 	"strings"
 
@@ -126,7 +127,7 @@ func (r Row) Spaces() (restricted, full string) {
 // has none. A pair is written "A within B".
 func (r Row) ErrorSpace() string {
 	switch {
-	case r.linear() && r.pair.Linear.Known > 0:
+	case r.linear() && r.pair.Linear.Known > 0, !isLinear(r.comparison):
 		return ""
 	case r.comparison.Error == nil:
 		return spaceName(r.comparison.Full)
@@ -146,6 +147,25 @@ func spaceName(s lrt.Space) string {
 		return s.String()
 	}
 	return "unnamed space"
+}
+
+// String states the row in a sentence: what was compared, the test with its
+// degrees of freedom, and what it is worth.
+func (r Row) String() string {
+	if r.err != nil {
+		return r.Name() + ": " + r.note()
+	}
+	t := r.Test()
+	s := r.Name() + ": "
+	switch d1, d2 := r.DF(); {
+	case t.Name == "F":
+		s += fmt.Sprintf("F(%s, %s) = %s", plain(d1), plain(d2), Number(t.Statistic))
+	case t.Law != nil:
+		s += fmt.Sprintf("%s = %s on %s", t.Name, Number(t.Statistic), t.Law)
+	default:
+		s += fmt.Sprintf("%s = %s", t.Name, Number(t.Statistic))
+	}
+	return s + ", " + lrt.FormatP(t.P, t.LogP) + " (" + t.Kind.String() + "); " + r.Hypothesis()
 }
 
 // note says in a few words what a reader of the row must know.

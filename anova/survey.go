@@ -4,7 +4,6 @@ import (
 	"context"
 	"fmt"
 	"iter"
-	"math"
 
 	"subsume.example/glm"
 	"subsume.example/lrt"
@@ -200,6 +199,3 @@ func (g *grid) Observations(string) lrt.Observations {
 func (g *grid) Windows(ctx context.Context) iter.Seq2[glm.Window, error] {
 	return func(yield func(glm.Window, error) bool) { yield(g.window, ctx.Err()) }
 }
-
-// whole reports whether x is a whole number of moderate size.
-func whole(x float64) bool { return x == math.Trunc(x) && math.Abs(x) < 1e9 }
