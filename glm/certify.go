@@ -74,8 +74,10 @@ func (k *certificate) decide() error {
 		if err := k.sameOrigin(); err != nil || !k.out.Exact {
 			return err
 		}
-		if err := k.coordinates(); err != nil || !k.out.Exact {
-			return err
+		for _, make := range []func() error{k.numerator, k.denominator} {
+			if err := make(); err != nil || !k.out.Exact {
+				return err
+			}
 		}
 		k.check("numerator", "Pn Pd = 0", k.qn.Overlap(k.qd))
 	}
@@ -170,7 +172,11 @@ func (k *certificate) apart(space lrt.Space, smaller, larger *view, term, identi
 		k.check(term, identity, math.Sqrt(worst))
 		return nil
 	}
-	if err := k.coordinates(); err != nil || !k.out.Exact {
+	make := k.denominator
+	if smaller == k.s {
+		make = k.numerator
+	}
+	if err := make(); err != nil || !k.out.Exact {
 		return err
 	}
 	q := k.qd
@@ -217,7 +223,7 @@ func (k *certificate) random(r lrt.RandomTerm, known bool) error {
 
 // byCoordinates computes the identities of a random term.
 func (k *certificate) byCoordinates(r lrt.RandomTerm, z *view, known bool) error {
-	if err := k.coordinates(); err != nil || !k.out.Exact {
+	if err := k.numerator(); err != nil || !k.out.Exact {
 		return err
 	}
 	zs, length := k.columns(z)
@@ -227,12 +233,17 @@ func (k *certificate) byCoordinates(r lrt.RandomTerm, z *view, known bool) error
 		k.check(r.Name, "Pn K Pn = 0", cn+rn)
 		return nil
 	}
+	if k.check(r.Name, "Pn K Pn = c Pn", rn); !k.out.Exact {
+		return nil
+	}
+	if err := k.denominator(); err != nil || !k.out.Exact {
+		return err
+	}
 	cd, rd := k.qd.Spread(zs)
 	if k.whole {
 		cd = 0 // K is nil beyond the joint factor, so that c is 0 throughout
 		rd = k.qd.Size(zs)
 	}
-	k.check(r.Name, "Pn K Pn = c Pn", rn)
 	k.check(r.Name, "Pd K Pd = c Pd", rd)
 	if k.qd.Dim() > 0 || k.whole {
 		k.check(r.Name, "one constant c for numerator and error", math.Abs(cn-cd))
@@ -300,30 +311,48 @@ func (k *certificate) evenLength(z *view) (float64, bool) {
 	return length, length > 0
 }
 
-// coordinates makes both pairs as orthonormal bases.
-func (k *certificate) coordinates() error {
-	if k.co != nil {
-		return nil
+// numerator makes Pn as an orthonormal basis; it refuses where there are too many columns.
+func (k *certificate) numerator() (err error) {
+	if k.qn == nil && k.coordinates() {
+		k.qn, err = k.between(k.s, k.b)
 	}
-	co, ok := k.j.factor.Coordinate()
-	if !ok {
-		k.refuse("design", "too many columns to check the identities", 0)
-		return nil
+	return err
+}
+
+// denominator makes Pd likewise.
+func (k *certificate) denominator() (err error) {
+	if k.qd == nil && k.coordinates() {
+		k.whole = k.e1 == nil && int(k.j.n) > k.j.factor.Rank
+		k.qd, err = k.between(k.e0, k.e1)
 	}
-	var qs [4]*linalg.Subspace
-	for i, v := range []*view{k.s, k.b, k.e0, k.e1} {
-		if v == nil {
-			qs[i] = co.Whole()
-			continue
+	return err
+}
+
+func (k *certificate) coordinates() bool {
+	if k.co == nil {
+		co, ok := k.j.factor.Coordinate()
+		if !ok {
+			k.refuse("design", "too many columns to check the identities", 0)
+			return false
 		}
-		var err error
-		if qs[i], err = k.j.subspace(co, v); err != nil {
-			return err
+		k.co = co
+	}
+	return true
+}
+
+// between returns a basis of what larger adds to smaller; nil is all rows.
+func (k *certificate) between(smaller, larger *view) (*linalg.Subspace, error) {
+	s, err := k.j.subspace(k.co, smaller)
+	if err != nil {
+		return nil, err
+	}
+	l := k.co.Whole()
+	if larger != nil {
+		if l, err = k.j.subspace(k.co, larger); err != nil {
+			return nil, err
 		}
 	}
-	k.co, k.qn, k.qd = co, qs[1].Minus(qs[0]), qs[3].Minus(qs[2])
-	k.whole = k.e1 == nil && int(k.j.n) > k.j.factor.Rank
-	return nil
+	return l.Minus(s), nil
 }
 
 // columns returns the columns of a random term in coordinates, as asked for up to

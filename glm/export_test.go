@@ -2,6 +2,7 @@ package glm
 
 import (
 	"context"
+	"errors"
 
 	"subsume.example/lrt"
 )
@@ -26,7 +27,7 @@ func CertifyByCoordinates(c lrt.Comparison) (*lrt.Certificate, error) {
 		return nil, err
 	}
 	k := &certificate{j: j, c: c, s: vs[0], b: vs[1], e0: e0, e1: e1, out: &lrt.Certificate{Exact: true, C: []float64{1}}}
-	if err := k.coordinates(); err != nil {
+	if err := errors.Join(k.numerator(), k.denominator()); err != nil {
 		return nil, err
 	}
 	known := j.opt.KnownVariance > 0

@@ -73,34 +73,51 @@ type Subspace struct{ basis [][]float64 }
 func (s *Subspace) Dim() int { return len(s.basis) }
 
 func inner(a, b []float64) float64 {
-	var s float64
-	for i, x := range a {
-		s += x * b[i]
+	var s, t, u, v float64
+	b = b[:len(a)]
+	i := 0
+	for ; i+3 < len(a); i += 4 {
+		s += a[i] * b[i]
+		t += a[i+1] * b[i+1]
+		u += a[i+2] * b[i+2]
+		v += a[i+3] * b[i+3]
 	}
-	return s
+	for ; i < len(a); i++ {
+		s += a[i] * b[i]
+	}
+	return (s + t) + (u + v)
 }
 
 func axpy(a float64, x, y []float64) {
+	if a == 0 {
+		return
+	}
+	y = y[:len(x)]
 	for i, v := range x {
 		y[i] += a * v
 	}
 }
 
-// add takes v off the basis, twice, and appends what is left if it is more than tol of v.
+// add takes v off the basis, twice where much goes (Giraud, Langou and
+// Rozložník 2005), and appends what is left if it is more than tol of v.
 func (s *Subspace) add(v []float64, tol float64) {
 	norm := math.Sqrt(inner(v, v))
 	if norm == 0 {
 		return
 	}
 	w := append([]float64(nil), v...)
-	for range 2 {
+	left := norm
+	for range 3 {
+		before := left
 		for _, q := range s.basis {
 			axpy(-inner(q, w), q, w)
 		}
-	}
-	left := math.Sqrt(inner(w, w))
-	if left <= tol*norm {
-		return
+		if left = math.Sqrt(inner(w, w)); left <= tol*norm {
+			return
+		}
+		if left > 0.7*before {
+			break
+		}
 	}
 	for i := range w {
 		w[i] /= left
