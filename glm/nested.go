@@ -62,14 +62,15 @@ func (j *joint) impliedEquations(s, b *view) error {
 			return fmt.Errorf("%w: %s does not follow from the restricted space", lrt.ErrNotNested, equationText(e))
 		}
 		norm := h.Dot(h).Float64()
-		left, implied := h, dd.DD{}
+		left, implied, size := h, dd.DD{}, 0.0
 		if s.restr != nil {
 			left, implied = s.restr.reduce(h)
+			size = s.restr.size(h)
 		}
 		if rest := left.Dot(left).Float64(); rest > 1e-18*norm && rest > 0 {
 			return fmt.Errorf("%w: %s does not follow from the restricted space", lrt.ErrNotNested, equationText(e))
 		}
-		if d := math.Abs(implied.Sub(value).Float64()); d > 1e-9*(math.Abs(value.Float64())+math.Abs(implied.Float64())) {
+		if d := math.Abs(implied.Sub(value).Float64()); d > 1e-9*(math.Abs(value.Float64())+size) {
 			return fmt.Errorf("%w: %s has another value in the restricted space", lrt.ErrNotNested, equationText(e))
 		}
 	}
@@ -123,7 +124,7 @@ func (j *joint) restrict(v *view, f *linalg.Factor) (*restricted, error) {
 		left, implied := r.reduce(h)
 		rest := left.Dot(left)
 		if rest.Float64() <= 1e-20*norm.Float64() || norm.Float64() == 0 {
-			if d := math.Abs(implied.Sub(value).Float64()); d > 1e-9*(math.Abs(value.Float64())+math.Abs(implied.Float64())+math.Sqrt(norm.Float64())*1e-6) {
+			if d := math.Abs(implied.Sub(value).Float64()); d > 1e-9*(math.Abs(value.Float64())+r.size(h)) {
 				return nil, fmt.Errorf("glm: %w: %s cannot hold together with the others", ErrContradiction, equationText(e))
 			}
 			continue // follows from the others
@@ -148,6 +149,15 @@ func (r *restricted) reduce(h linalg.Half) (linalg.Half, dd.DD) {
 		h = h.Sub(u.Scale(a))
 	}
 	return h, implied
+}
+
+// size returns the sum of the absolute terms of the value that r implies for a function.
+func (r *restricted) size(h linalg.Half) float64 {
+	s := 0.0
+	for i, u := range r.halfs {
+		s += math.Abs(u.Dot(h).Mul(r.value[i]).Float64())
+	}
+	return s
 }
 
 // apply moves coordinates onto the restricted space and returns the sum of squares that costs.

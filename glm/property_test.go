@@ -387,3 +387,73 @@ func TestRandomRestrictions(t *testing.T) {
 		}
 	}
 }
+
+// TestNestedRestrictions: whether restrictions imply each other is decided by what they
+// say, not by how: 0.1 and 0.1 imply equality, 0.1 and 0.2 a sum of 0.3.
+func TestNestedRestrictions(t *testing.T) {
+	p := field(87, 40)
+	for i := range p.y {
+		p.y[i] += 1e6
+	}
+	full := model(t, p.data(t), nil, one, cx, glm.Covariate{Field: "off"}, fa, fb)
+	restrict := func(m *glm.Model, rs ...lrt.Restriction) *glm.Model {
+		t.Helper()
+		s, err := m.Restrict(rs...)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return s.(*glm.Model)
+	}
+	sum := func(v float64, names ...string) lrt.Restriction {
+		e := lrt.Equation{Value: v}
+		for _, n := range names {
+			e.Names, e.Coef = append(e.Names, n), append(e.Coef, 1)
+		}
+		return lrt.Equations(e)
+	}
+	for _, c := range []struct {
+		name   string
+		s, b   *glm.Model
+		nested bool
+	}{
+		{"both 0.1, equal", restrict(full, lrt.Fix("x", 0.1), lrt.Fix("off", 0.1)), restrict(full, lrt.Equate("x", "off")), true},
+		{"0.1 and 0.2, sum 0.3", restrict(full, lrt.Fix("x", 0.1), lrt.Fix("off", 0.2)), restrict(full, sum(0.3, "x", "off")), true},
+		{"0.1 and 0.2, sum 0.4", restrict(full, lrt.Fix("x", 0.1), lrt.Fix("off", 0.2)), restrict(full, sum(0.4, "x", "off")), false},
+		{"0.1 and 0.2, equal", restrict(full, lrt.Fix("x", 0.1), lrt.Fix("off", 0.2)), restrict(full, lrt.Equate("x", "off")), false},
+		{"1e-20 and 2e-20, equal", restrict(full, lrt.Fix("x", 1e-20), lrt.Fix("off", 2e-20)), restrict(full, lrt.Equate("x", "off")), false},
+		{"all levels, two levels", restrict(full, lrt.Equate("a=p", "a=q", "a=r")), restrict(full, lrt.Equate("a=q", "a=r")), true},
+		{"other order", restrict(full, lrt.Equate("a=r", "a=p"), lrt.Equate("a=q", "a=r")), restrict(full, lrt.Equate("a=p", "a=q")), true},
+		{"without a term, its slope 0", model(t, full.Source(), nil, one, fa, fb), restrict(full, lrt.Fix("x", 0)), true},
+		{"without a term, its slope 1", model(t, full.Source(), nil, one, fa, fb), restrict(full, lrt.Fix("x", 1)), false},
+		{"said twice", restrict(full, lrt.Fix("x", 0.1), lrt.Fix("x", 0.1), lrt.Equate("a=p", "a=q")), restrict(full, lrt.Fix("x", 0.1)), true},
+	} {
+		if err := c.s.NestedIn(c.b); (err == nil) != c.nested {
+			t.Errorf("%s: %v", c.name, err)
+		}
+	}
+}
+
+// TestContradictions: equations that cannot hold together are refused at any scale.
+func TestContradictions(t *testing.T) {
+	full := model(t, field(88, 30).data(t), nil, one, cx, glm.Covariate{Field: "off"}, fa)
+	for _, c := range []struct {
+		rs   []lrt.Restriction
+		want error
+	}{
+		{[]lrt.Restriction{lrt.Fix("x", 1e-20), lrt.Fix("x", 2e-20)}, glm.ErrContradiction},
+		{[]lrt.Restriction{lrt.Fix("x", 0.1), lrt.Fix("off", 0.2), lrt.Equate("x", "off")}, glm.ErrContradiction},
+		{[]lrt.Restriction{lrt.Fix("x", 0.1), lrt.Fix("off", 0.1), lrt.Equate("x", "off")}, nil},
+		{[]lrt.Restriction{lrt.Fix("x", 0), lrt.Fix("off", 0), lrt.Equate("x", "off")}, nil},
+		{[]lrt.Restriction{lrt.Fix("x", 1e20), lrt.Fix("x", 1e20)}, nil},
+		{[]lrt.Restriction{lrt.Equate("a=p", "a=q"), lrt.Equate("a=q", "a=r"), lrt.Equate("a=p", "a=r")}, nil},
+		{[]lrt.Restriction{lrt.Fix("a=q", 1)}, glm.ErrNotEstimable},
+	} {
+		s, err := full.Restrict(c.rs...)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err = s.(*glm.Model).Fit(context.Background(), nil); !errors.Is(err, c.want) {
+			t.Errorf("%v: %v, want %v", s, err, c.want)
+		}
+	}
+}
