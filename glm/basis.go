@@ -175,17 +175,22 @@ func (j *joint) asked(onBasis dd.DD, c pulled) float64 {
 }
 
 // mappable reports whether asked coefficients can be read off the basis with
-// columns set aside at zero: the carrier is whole, and of no polynomial is
-// a power set aside below one that is kept.
+// columns set aside at zero: the carrier is whole, of no polynomial is
+// a power set aside below one that is kept, and no column was set aside for a
+// constant that stands after it.
 func (j *joint) mappable(m *Model, f *linalg.Factor) bool {
 	if !j.shifted {
 		return true
 	}
 	carrier := j.group(m.cols[m.carrier()])
+	moved := j.movedBefore(m)
 	lowest := make(map[int]int)
 	gone := make(map[int]int)
 	for _, a := range f.Aside {
 		if a.Group == carrier && !a.Empty {
+			return false
+		}
+		if moved && j.cols[a.Group].dense() && !j.blank(a) {
 			return false
 		}
 		if j.basis.powers[a.Group] != nil {
@@ -201,6 +206,38 @@ func (j *joint) mappable(m *Model, f *linalg.Factor) bool {
 		}
 	}
 	return true
+}
+
+// movedBefore reports whether a dense column before the carrier was shifted.
+func (j *joint) movedBefore(m *Model) bool {
+	for _, b := range m.cols[:m.carrier()] {
+		g := j.group(b)
+		if p := j.basis.powers[g]; p != nil && p.centre != 0 {
+			return true
+		}
+		if !b.dense() {
+			continue
+		}
+		d := j.denseColumn(g)
+		for k := range b.Names {
+			if j.shift[d+k] != 0 {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// blank reports whether a column set aside is zero as it was asked for, not only
+// less its shift.
+func (j *joint) blank(a linalg.Aside) bool {
+	switch p := j.basis.powers[a.Group]; {
+	case !a.Empty || !j.cols[a.Group].dense():
+		return a.Empty
+	case p != nil:
+		return p.centre == 0
+	}
+	return j.shift[j.denseColumn(a.Group)+a.Column] == 0
 }
 
 // fromBasis returns x·2^exp + shift, ±Inf where that leaves the range.

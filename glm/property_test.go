@@ -457,3 +457,45 @@ func TestContradictions(t *testing.T) {
 		}
 	}
 }
+
+// TestConstantField: a field of one value is one with the constant: the later of
+// them is set aside, and called collinear, not empty.
+func TestConstantField(t *testing.T) {
+	p := field(89, 30)
+	five, moved := make([]float64, 30), make([]float64, 30)
+	for i := range five {
+		five[i], moved[i] = 5, p.x[i]+3
+	}
+	for i := range moved {
+		moved[i] = math.Round(p.x[i]*64)/64 + 1000
+		p.x[i] = moved[i] - 3
+	}
+	d, err := p.data(t).With(glm.Numbers("five", five), glm.Numbers("moved", moved))
+	if err != nil {
+		t.Fatal(err)
+	}
+	c5, cm := glm.Covariate{Field: "five"}, glm.Covariate{Field: "moved"}
+	for _, c := range []struct {
+		terms []glm.Term
+		aside string
+	}{
+		{[]glm.Term{one, c5, cx}, "five"},
+		{[]glm.Term{c5, one, cx}, "constant"},
+		{[]glm.Term{cx, c5, one}, "constant"},
+		{[]glm.Term{one, cx, cm}, "moved"},
+		{[]glm.Term{cx, cm, one}, "constant"},
+		{[]glm.Term{cx, one, cm}, "moved"},
+		{[]glm.Term{glm.Powers{Field: "x", Degree: 2}, c5, one}, "constant"},
+	} {
+		f := fitted(t, model(t, d, nil, c.terms...))
+		var aside []string
+		for _, co := range f.Coefficients {
+			if co.Aliased {
+				aside = append(aside, co.Name)
+			}
+		}
+		if !slices.Equal(aside, []string{c.aside}) || hasCode(f.Warnings, "empty") || hasCode(f.Warnings, "collinear") != (c.aside != "constant") {
+			t.Errorf("%s: %v set aside, want %s; warnings %v", f.Model, aside, c.aside, f.Warnings)
+		}
+	}
+}

@@ -28,8 +28,9 @@ func (j *joint) aliases(v *view, f *linalg.Factor) []Alias {
 			continue
 		}
 		b := j.cols[a.Group]
-		as = append(as, Alias{Term: b.name, Column: b.Names[a.Column], Remainder: a.Ratio, Empty: a.Empty,
-			Structural: !a.Empty && b.structural(a.Column)})
+		empty := j.blank(a)
+		as = append(as, Alias{Term: b.name, Column: b.Names[a.Column], Remainder: a.Ratio, Empty: empty,
+			Structural: !empty && b.structural(a.Column)})
 	}
 	return as
 }
