@@ -24,8 +24,9 @@ import (
 //
 // Each tail is an integral over the common normal inside one over log s, both of
 // positive terms by trapezoidal rules that check themselves: relative error
-// below 1e-10 on the tail, in practice near 1e-14 (Dunnett's inner integral is his equation 3,
-// in the form of Dunnett and Sobel, Biometrika 42, 1955).
+// below 1e-10 on the tail, in practice near 1e-14 (seven rows by two methods at 24 digits, and all
+// of random laws by halved steps); the inner integral is that of Dunnett and Sobel (Biometrika
+// 42, 1955). A tail takes 0.1 to 1 ms, up to 20 ms for Lambda near ±1.
 type Dunnett struct {
 	Lambda   []float64
 	Nu       float64

@@ -18,8 +18,8 @@ import (
 //
 // Each tail is an integral of positive terms over log s by the trapezoidal
 // rule. Measured against integrals at 170 bits, tails down to 1e-304: relative
-// error of 5e-16 in the median and 1e-13 at most; 5 to 50 µs a tail, with no
-// allocation.
+// error of 6e-16 in the median and 1e-13 at most, the same up to 10000 values and for
+// Nu from 1e-3 to 1e12; 5 to 50 µs a tail, with no allocation.
 type MaximumModulus struct {
 	K  int
 	Nu float64

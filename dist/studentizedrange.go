@@ -16,12 +16,11 @@ import (
 // every method returns NaN.
 //
 // Both tails are computed directly, as a double integral of positive terms by
-// trapezoidal rules that converge exponentially (see the sources for nodes,
-// steps and regions; the one-line form of the inner integral is Pearson and
-// Hartley's, Biometrika 32, 1942; the outer one runs over log s). Measured
-// against 80-bit double integrals, tails down to 1e-300: relative error of 7e-16 in the
-// median and 2e-13 at most, 1e-14 for tails above 1e-30. A tail takes 30 to
-// 250 µs by K, with no allocation; a Batch shares that work between many x.
+// trapezoidal rules that converge exponentially (regions and sources in the package documentation).
+// Measured against 80-bit double integrals, tails down to 1e-300: relative error of 7e-16 in the
+// median and 2e-13 at most, 1.2e-14 for tails above 1e-30; against rows at 24 digits with up to 1000
+// groups and Nu from 1e-3 to 1e12, 1e-13. A tail takes 15 to 120 µs by K where math.Exp takes 5 ns,
+// with no allocation; Survivals shares that work between many x.
 type StudentizedRange struct {
 	K  int
 	Nu float64

@@ -42,14 +42,15 @@ const (
 // switch, not an interface, so that no evaluation allocates.
 type unitLaw struct {
 	kind   unitKind
-	n      int     // k - 1
-	middle float64 // near the median: below it the lower tail is summed, above it the upper one
-	one    float64 // below it the tails are constant to within 1e-18
-	inf    float64 // above it P(W <= w) = 1 to within 1e-18
-	power  float64 // P(W <= w) ~ w^power at 0
-	step   float64 // largest step in log w that resolves the law
-	inner  float64 // step of the inner lattice
-	cells  *cells  // interpolated tails of a batch, nil otherwise
+	n      int         // k - 1
+	middle float64     // near the median: below it the lower tail is summed, above it the upper one
+	one    float64     // below it the tails are constant to within 1e-18
+	inf    float64     // above it P(W <= w) = 1 to within 1e-18
+	power  float64     // P(W <= w) ~ w^power at 0
+	step   float64     // largest step in log w that resolves the law
+	inner  float64     // step of the inner lattice
+	bell   [96]float64 // exp(-t²/2) at its nodes t = 0, inner, 2 inner, ...
+	cells  *cells      // interpolated tails of a batch, nil otherwise
 
 	quad float64 // c in P(W > w) ~ exp(-c w²/2)
 	// Below one, P(W > w) is base and P(W <= w) is 1-base: 1 and 0 unless W may be
@@ -102,6 +103,13 @@ func newUnitRange(k int) unitLaw {
 	// transform falls as exp(-π ω/(2b)); the range has the square of it.
 	b := math.Max(1, special.NormalUpperQuantile(1/kf)+0.35)
 	u.inner = math.Min(0.43, 0.43/b)
+	for i := range u.bell {
+		t := u.inner * float64(i)
+		if t > 10 {
+			break
+		}
+		u.bell[i] = math.Exp(-0.5 * t * t)
+	}
 	u.step = math.Min(0.12, 0.72/(b*u.middle))
 	return u
 }
@@ -235,13 +243,13 @@ func (u *unitLaw) rangeLower(w float64, density bool) unitTails {
 	r := 1 / d0
 	fa := special.NormalDensity(a)
 	p := math.Exp(-a * h) // φ(a±t) = φ(a) exp(-t²/2) p^(±i)
-	pp, pm := 1.0, 1.0
+	pp, pm, pr := 1.0, 1.0, 1/p
 	lo := fa
 	den := 0.5 * fa * fa
 	for i := 1; i < 2000; i++ {
 		t := h * float64(i)
 		pp *= p
-		pm = 1 / pp
+		pm *= pr
 		e := fa * math.Exp(-0.5*t*t)
 		fp, fm := e*pp, e*pm
 		var d float64
@@ -300,13 +308,13 @@ func (u *unitLaw) rangeUpper(w float64, density bool) unitTails {
 	}
 	fa := special.NormalDensity(a)
 	p := math.Exp(-a * h) // φ(a±t) = φ(a) exp(-t²/2) p^(±i)
-	pp := 1.0
+	pp, pm, pr := 1.0, 1.0, 1/p
 	grow := 6.283185307179586 * math.Exp(a*a)
-	for i := 0; i < 2000; i++ {
+	for i, e := range u.bell[:] {
 		t := h * float64(i)
-		e := math.Exp(-0.5 * t * t)
-		fp, fm := fa*e*pp, fa*e/pp
+		fp, fm := fa*e*pp, fa*e*pm
 		pp *= p
+		pm *= pr
 		e *= e
 		// Q(a+t), and Q(a-t), Φ(a-t), Q(a-t)/φ(a-t) times exp(-t²).
 		var mp, qa, pb, b float64
