@@ -23,6 +23,7 @@ func init() {
 		Table{File: "ncfpower", Params: 3, New: ncf, Everyday: everyday(2)},
 		Table{File: "ncx2_wide", Params: 2, New: ncx2, Everyday: everyday(1)},
 		Table{File: "ncf_wide", Params: 3, New: ncf, Everyday: everyday(2)},
+		Table{File: "nct_wide", Params: 2, New: nct, Everyday: everyday(1)},
 	)
 }
 

@@ -3,13 +3,14 @@ main tables, degrees of freedom 1e-3 ... 0.1 and 1e10 ... 1e12, lambda 1e6 ... 1
 
 Run in dist/testdata with a Python that has mpmath:  python3 gen/noncentral_wide.py
 
-Every row is computed by two methods and kept only if they agree to 1e-20 relative:
+Every row is computed by two methods and kept only if they agree to 1e-20 relative (t: 1e-18):
   mixture   Poisson mixture, summed by parts over the window of its dominating terms
   central   the same mixture with every central tail by mpmath's incomplete gamma or beta function
   contour   integral of the moment generating function, trapezoidal rule refined until it settles
   other     contour through another point at another precision
   quad      definition of t: normal tail over the law of s = sqrt(V/nu), by Gauss-Legendre panels
   trapeze   the same integral by the trapezoidal rule in log s
+  series    mixture of incomplete beta functions over whole and half indices (small nu)
 """
 import random
 import sys
@@ -272,7 +273,7 @@ def t_ends(f, nu):
 
 def t_quad(f, ends):
     lo, p, hi = ends
-    n = 16
+    n = 24
     pts = [lo + (p - lo) * mpf(i) / n for i in range(n)] + [p + (hi - p) * mpf(i) / n for i in range(n + 1)]
     return quad(f, pts, method='gauss-legendre', maxdegree=5)
 
@@ -288,6 +289,27 @@ def t_trapeze(f, ends):
             return s
         v, h = s, h / 2
     raise ValueError('does not settle')
+
+
+def t_series(nu, delta, t):
+    """The mixture of incomplete beta functions over whole and half indices, for moderate delta; t < 0 turns both signs."""
+    nu, delta, t = mpf(nu), mpf(delta), mpf(t)
+    if t < 0:
+        l, u, d = t_series(nu, -delta, -t)
+        return u, l, d
+    y, y1, b, m = t * t / (nu + t * t), nu / (nu + t * t), nu / 2, delta * delta / 2
+    l = u = d = mpf(0)
+    for i in range(0, 600):
+        a = mpf(i + 1) / 2  # i even: Poisson weights, i odd: the half ones
+        w = exp(-m) * m ** (mpf(i) / 2) / mp.gamma(mpf(i) / 2 + 1) / 2
+        if i % 2 and delta < 0:
+            w = -w
+        l += w * betainc(a, b, 0, y, regularized=True)
+        u += w * betainc(b, a, 0, y1, regularized=True)
+        d += w * exp(a * log(y) + b * log(y1) + loggamma(a + b) - loggamma(a) - loggamma(b))
+        if i > 2 * m and abs(w) < mpf(10) ** -60:
+            break
+    return l + erfc(delta / sqrt(mpf(2))) / 2, u, d * 2 / t
 
 
 def agree(v, w):
@@ -309,7 +331,7 @@ def line(params, x, v):
 def write(name, head, rows, left):
     with open(name, 'w') as f:
         f.write('# by gen/noncentral_wide.py: parameters outside the grid of the main tables\n')
-        f.write('# two methods each, kept where they agree to 1e-20; %d rows kept, %d left out\n' % (len(rows), left))
+        f.write('# two methods each, kept where they agree to %s; %d rows kept, %d left out\n' % (nstr(TOL, 1), len(rows), left))
         f.write(head + ',x,lower,upper,log_lower,log_upper,density,log_density\n')
         f.write('\n'.join(rows) + '\n')
     print(name, len(rows), 'rows,', left, 'left out')
@@ -413,6 +435,8 @@ def t_draw():
         else:
             out[0] = 1 - out[1]
         return tuple(out)
+    if nu < 1:
+        return (nu, delta), x, lambda: by(t_quad), lambda: t_series(nu, delta, x)
     return (nu, delta), x, lambda: by(t_quad), lambda: by(t_trapeze)
 
 
@@ -420,6 +444,6 @@ if __name__ == '__main__':
     random.seed(77)
     write('ncx2_wide.csv', 'df,lambda', *collect(chi_draw, 60))
     write('ncf_wide.csv', 'd1,d2,lambda', *collect(f_draw, 60))
-    mp.dps = 28
+    mp.dps, TOL = 28, mpf(10) ** -18
     random.seed(78)
     write('nct_wide.csv', 'df,delta', *collect(t_draw, 40))
