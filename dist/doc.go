@@ -182,6 +182,10 @@
 //	ncf_wide    log           120  5.9e-17  -             5.7e-16
 //	ncf_wide    density        60  1.0e-16  -             7.6e-16
 //	ncf_wide    logdensity     60  4.7e-17  -             6.1e-16
+//	nct_wide    tail           40  1.7e-16  -             8.9e-16
+//	nct_wide    log            80  9.2e-17  -             1.2e-15
+//	nct_wide    density        40  1.4e-16  -             6.9e-16
+//	nct_wide    logdensity     40  3.4e-17  -             2.0e-16
 //	ncinv       lambda        130  4.9e-17  7.4e-16       7.4e-16
 //
 // What is not promised: the far ends of quantiles are as sharp as the tail allows, which is
