@@ -83,7 +83,27 @@
 // Quantiles invert the smaller tail: Newton's iteration for its logarithm over log x, inside a bracket
 // over the ordered floats that is halved when Newton fails to.
 //
-// The regions of the noncentral laws are in internal/noncentral.
+// # How the noncentral laws are computed
+//
+// A noncentral tail is an integral of the moment generating function over a closed path in the
+// complex plane through the saddle point: a prefactor, its exponent in double-double, times a
+// trapezoidal sum of about 13 to 90 nodes that converges geometrically (Rice 1968 and 1973; Helstrom
+// 1978; Trefethen and Weideman 2014) and needs the same work for every parameter. Where the integrand does not fall
+// within one turn, the Poisson mixture has few terms and is summed in double-double, all terms positive
+// (Benton and Krishnamoorthy 2003). With A the index of the mixture's largest term, B = x/(2U) and
+// ρ = y/(U-y), U the saddle point in 1/(1-2s):
+//
+//	NoncentralChiSquared   A + B >= 22, B - A = K/2             circle through the saddle point
+//	                       else                                 mixture, A < 11
+//	NoncentralF            A + (D2/2) log(1+ρ) >= 42, D2 >= 50  circle
+//	                       the same, D2 < 50                    path bent to the left around y
+//	                       else                                 mixture, A < 42
+//	NoncentralT, t > 0     upper tail, Delta < 2                normal tails over the law of log s, trapezoidal
+//	                       lower tail; upper, Delta >= 2        NoncentralF{1, Nu, Delta²} and P(T < -t)
+//
+// The derivative in the noncentrality comes from the same nodes, so that the finders take Newton
+// steps. Formulas and bounds stand in internal/noncentral; its tests compare two paths, and path and mixture,
+// over the whole domain: the largest difference seen at 10⁶ points is 3e-15.
 //
 // # How the laws of the largest are computed
 //

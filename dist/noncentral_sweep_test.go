@@ -113,7 +113,7 @@ func checkNoncentral(law fullLaw, x float64) string {
 		return "a logarithm above 0 or a density below"
 	}
 	for _, p := range []struct{ v, l float64 }{{lo, llo}, {up, lup}, {d, ld}} {
-		if p.v > 1e-300 && p.v < 1e300 && !(math.Abs(math.Log(p.v)-p.l) <= 6e-16*(1+math.Abs(p.l))) {
+		if p.v > 1e-300 && p.v < 1e300 && !(math.Abs(math.Log(p.v)-p.l) <= 2e-15*(1+math.Abs(p.l))) {
 			return "logarithm and value disagree"
 		}
 	}
