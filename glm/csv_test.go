@@ -7,10 +7,13 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"os"
+	"path/filepath"
 	"slices"
 	"strings"
 	"testing"
 	"testing/iotest"
+	"unicode/utf8"
 
 	"github.com/google/go-cmp/cmp"
 	"github.com/google/go-cmp/cmp/cmpopts"
@@ -342,6 +345,63 @@ func TestErrorInLaterChunk(t *testing.T) {
 		if !errors.As(err, &e) || e.Line != rows+2 || e.Column != 4 || !errors.Is(err, ErrQuote) {
 			t.Errorf("%d workers: %v, want line %d", workers, err, rows+2)
 		}
+	}
+}
+
+// TestFiles reads a regular file, from its middle too, and a pipe.
+func TestFiles(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "f.csv")
+	if err := os.WriteFile(path, []byte("not this\ny,g\n1.5,a\n,b\n"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	f, err := os.Open(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	if _, err := f.Seek(9, io.SeekStart); err != nil {
+		t.Fatal(err)
+	}
+	r, w, err := os.Pipe()
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer r.Close()
+	go func() {
+		_, _ = io.WriteString(w, "y,g\n1.5,a\n,b\n")
+		_ = w.Close()
+	}()
+	for _, in := range []io.Reader{f, r} {
+		d, err := ReadCSV(context.Background(), in, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if got := table(t, d); len(got["y"]) != 2 || got["g"][1] != "'b'" {
+			t.Errorf("read %v", got)
+		}
+	}
+	if _, err := ReadCSV(context.Background(), f, nil); err == nil { // at its end now
+		t.Error("an exhausted file is read")
+	}
+}
+
+func TestMessages(t *testing.T) {
+	_, err := read("y\n1\n2\n", &CSVOptions{Name: "upload", MaxRows: 1})
+	if got := fmt.Sprint(err); got != "glm: upload: input is larger than the limit of 1 rows" {
+		t.Errorf("%s", got)
+	}
+	_, err = read("y\n1\n"+strings.Repeat("ä", 200)+"\n", &CSVOptions{Kinds: map[string]Kind{"y": Numeric}})
+	if got := fmt.Sprint(err); len(got) > 150 || !strings.Contains(got, "…") || !utf8.ValidString(got) {
+		t.Errorf("%s", got)
+	}
+	names := make([]string, 30)
+	for i := range names {
+		names[i] = fmt.Sprint("c", i)
+	}
+	line := strings.Join(names, ",") + "\n"
+	_, err = read(line+line, &CSVOptions{Only: []string{"z"}})
+	if got := fmt.Sprint(err); !strings.Contains(got, `"c11" and 18 more`) {
+		t.Errorf("%s", got)
 	}
 }
 
