@@ -73,7 +73,7 @@ func BetaKernelQuick(a, b, x, y dd.DD) Scaled {
 
 // BetaTail returns one tail of the beta law at x, y = 1 - x: the upper one
 // 1 - I_x(a, b) = I_y(b, a) if upper is set, else the lower one I_x(a, b). The
-// returned tail is the one on the side of x away from the mean a/(a+b) of the logit's mode.
+// returned tail is the one on the side of x away from the mode a/(a+b) of the logit.
 //
 // With the arguments exchanged so that x <= a/(a+b):
 //
@@ -81,7 +81,8 @@ func BetaKernelQuick(a, b, x, y dd.DD) Scaled {
 //	a < 30 or r < 0.6                                positive series in x (DLMF 8.17.8)
 //	otherwise                                        Mills ratio by quadrature
 //
-// where r = max(x, x (a+b)/(a+1)) bounds the quotient of terms.
+// where r = max(x, x (a+b)/(a+1)) bounds the quotient of terms. Where a and b are plain numbers
+// from 1e-3 to 1e13 and the prefactor is above e^-660, quickBetaTail answers first.
 func BetaTail(a, b, x, y dd.DD) (t Scaled, upper bool) {
 	switch {
 	case x.Hi <= 0:

@@ -54,6 +54,9 @@ func GammaKernelQuick(a, x dd.DD) Scaled {
 //	x <= a otherwise             lower: Mills ratio by quadrature
 //	x > a, x < 8                 upper: complement of the series in double-double
 //	x > a otherwise              upper: Mills ratio by quadrature
+//
+// Where a is a plain number from 1e-3 to 1e13 and the prefactor is above e^-660, quickGammaTail
+// answers first.
 func GammaTail(a, x dd.DD) (t Scaled, upper bool) {
 	switch {
 	case x.Hi <= 0:

@@ -90,8 +90,10 @@ func quickBetaKernel(a, b float64, x, y dd.DD) (Scaled, bool) {
 // quickBetaTail is BetaTail on the quick path. With the arguments exchanged so that
 // x <= a/(a+b):
 //
+//	a or b whole <= 16, both multiples of 1/2         finite sum (finiteBetaTail)
 //	quotient of terms below 0.5, or x < 0.35, a < 8   series, its first terms in double-double
 //	x > 0.9, y (a+b) < 3                             complement of the series in y, more terms in double-double
+//	both above quickMax                              Mills ratio by quadrature
 //	otherwise                                        continued fraction of Didonato and Morris (1992); left
 //	                                                 to the full path where it is slow (x near 1)
 func quickBetaTail(a, b float64, x, y dd.DD) (t Scaled, upper, ok bool) {
