@@ -46,7 +46,7 @@ func ExampleFit_Combination() {
 	fmt.Println(errors.Is(err, glm.ErrNotEstimable), err)
 	// Output:
 	// bran − husk: 0.6022 ± 0.0873, 0.4009 to 0.8035, t = 6.899 <nil>
-	// true glm: not estimable from these data: it involves "substrate=straw", which other columns span or no row has
+	// true glm: not estimable from these data: it involves "substrate=straw", which other columns span or no row has; state differences between levels
 }
 
 func ExampleFit_Coefficient() {

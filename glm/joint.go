@@ -61,7 +61,7 @@ func Join(ctx context.Context, cs ...lrt.Comparison) ([]lrt.Comparison, error) {
 		to := &models
 		add := func(s lrt.Space) (lrt.Space, error) {
 			m, ok := s.(*Model)
-			if !ok {
+			if !ok || m == nil {
 				return nil, notLinear(s)
 			}
 			*to = append(*to, m)

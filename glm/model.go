@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"subsume.example/lrt"
@@ -153,6 +154,9 @@ func (m *Model) With(ctx context.Context, terms ...Term) (*Model, error) {
 		b, err := bind(ctx, t, m.src)
 		if err != nil {
 			return nil, err
+		}
+		if slices.Contains(b.fields, m.response) && !b.FromResponse {
+			return nil, &TermError{Term: b.name, Err: fmt.Errorf("%w: it reads the response %q, which would explain itself (Columns.FromResponse marks a term that means to)", ErrTerm, m.response)}
 		}
 		if w.find(b) < 0 {
 			w.cols = append(w.cols, b)
@@ -354,8 +358,10 @@ func equationText(e lrt.Equation) string {
 }
 
 // Restrict returns the part of the model on which linear equations between
-// coefficients hold. Bounds and maps are not linear spaces: they are refused with an
-// error wrapping lrt.ErrNotRestrictable.
+// coefficients hold. An equation must be about fitted values, so that levels of a
+// factor beside a constant are restricted by their differences; the fit says
+// ErrNotEstimable otherwise. Bounds and maps are not linear spaces: they are refused
+// with an error wrapping lrt.ErrNotRestrictable.
 func (m *Model) Restrict(rs ...lrt.Restriction) (lrt.Space, error) {
 	w := *m
 	w.eqs = append([]lrt.Equation(nil), m.eqs...)

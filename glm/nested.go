@@ -175,7 +175,11 @@ func (r *restricted) apply(h linalg.Half) (linalg.Half, dd.DD) {
 func (j *joint) columnName(at int) string {
 	for g, b := range j.cols {
 		if o := j.gram.Offset(g); at >= o && at < o+len(b.Names) {
-			return fmt.Sprintf("%q, which other columns span or no row has", b.Names[at-o])
+			hint := ""
+			if b.Key != "constant" && b.structural(at-o) {
+				hint = "; state differences between levels"
+			}
+			return fmt.Sprintf("%q, which other columns span or no row has%s", b.Names[at-o], hint)
 		}
 	}
 	return "a column that is not in the model"

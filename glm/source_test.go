@@ -124,6 +124,13 @@ func TestUserTermFaults(t *testing.T) {
 	if want := compare(t, small, model(t, d, nil, one, cx)); relative(got.Exact.Statistic, want.Exact.Statistic) > 1e-14 {
 		t.Errorf("F = %g, want %g", got.Exact.Statistic, want.Exact.Statistic)
 	}
+	// The response explains itself only where a term says that it means to.
+	if _, err := small.With(ctx, glm.Covariate{Field: "y"}); !errors.Is(err, glm.ErrTerm) {
+		t.Errorf("response as covariate: %v", err)
+	}
+	if _, err := glm.Join(ctx, lrt.Comparison{Restricted: small, Full: (*glm.Model)(nil)}); !errors.Is(err, lrt.ErrInvalid) {
+		t.Errorf("nil joined: %v", err)
+	}
 	if _, err := small.With(ctx, glm.Cross{cx, nil}); !errors.Is(err, glm.ErrTerm) {
 		t.Errorf("part nil: %v", err)
 	}

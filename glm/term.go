@@ -134,7 +134,9 @@ func copyField(w Window, f int, hi, lo []float64) {
 // level. A numeric field serves too, its distinct values being the levels in
 // ascending order. The first level, or the one named by Reference, comes
 // last among the columns, so that it is the one set aside when the model has a
-// constant: the other coefficients are then differences from it.
+// constant: the other coefficients are then differences from it. Combinations and
+// restrictions name both sides of a difference, lrt.Equate("oven=west", "oven=east"),
+// so that they mean the same whichever level is set aside.
 type Factor struct {
 	Field     string
 	Reference string // level to compare with; "": the first
