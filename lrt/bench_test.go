@@ -3,7 +3,9 @@ package lrt
 import (
 	"fmt"
 	"math"
+	"sort"
 	"testing"
+	"time"
 
 	"gonum.org/v1/gonum/diff/fd"
 	"gonum.org/v1/gonum/mathext"
@@ -161,6 +163,35 @@ func BenchmarkDeclaredGamma(b *testing.B) {
 				}
 			}
 			b.ReportMetric(float64(*d.calls)/float64(b.N), "calls/op")
+		})
+	}
+}
+
+// The same two routes turn by turn, so that a busy machine slows both: the
+// metric x is the peer's time over ours.
+func BenchmarkDeclaredRace(b *testing.B) {
+	d := newGammaRace(1000)
+	for _, c := range []struct {
+		name     string
+		with     parts
+		analytic bool
+	}{{"each against differences", withEach, false}, {"plain against differences", 0, false}, {"gradient against gradient", withGradient, true}} {
+		b.Run(c.name, func(b *testing.B) {
+			full := mustBind(b, d.model(c.with), d, 1000)
+			small := mustRestrict(b, full, Equate(Names("shape", 5)...), Equate(Names("scale", 5)...))
+			var ours, theirs []float64
+			for b.Loop() {
+				t := time.Now()
+				if _, err := Compare(bg, small, full, nil); err != nil {
+					b.Fatal(err)
+				}
+				u := time.Now()
+				d.peer(c.analytic)
+				ours, theirs = append(ours, u.Sub(t).Seconds()), append(theirs, time.Since(u).Seconds())
+			}
+			sort.Float64s(ours)
+			sort.Float64s(theirs)
+			b.ReportMetric(theirs[len(theirs)/2]/ours[len(ours)/2], "x")
 		})
 	}
 }

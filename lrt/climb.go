@@ -151,7 +151,7 @@ func (r *region) diagonal() {
 
 const (
 	gainTol   = 1e-14 // what may be left to gain in log likelihood: by good gradients,
-	plainTol  = 1e-12 // and by differences of whole log likelihoods
+	plainTol  = 5e-12 // and by differences of whole log likelihoods
 	closeTol  = 1e-9  // good enough when rounding hides the rest
 	looseTol  = 1e-6  // still called a maximum, with a warning
 	edgeRatio = 1e-4  // distance to the end of a range, against the start's, that calls for a look at the end itself
@@ -227,7 +227,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		}
 		tol := gainTol
 		if !p.each && !p.gradient {
-			tol = plainTol + p.noise
+			tol = plainTol + 2*p.noise
 		}
 		if damp == 0 && gain < 0.5 && (!haveInfo || p.far(s.u, uInfo, info) > reach) {
 			if !p.confirm(s.u) {
@@ -246,6 +246,15 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		}
 		if damp == 0 && gain <= tol {
 			s.converged = true
+			// The last step gains nothing that f can show, yet the estimate has it for one evaluation.
+			for j := range trial {
+				trial[j] = s.u[j] + r.s[j]
+			}
+			if f := p.value(trial); f >= s.f-2*p.noise {
+				copy(s.u, trial)
+				s.f = f
+				p.settle(f)
+			}
 			break
 		}
 		// No coordinate on a curved scale moves further than the likelihood can have been looked at.

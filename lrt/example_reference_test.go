@@ -127,3 +127,20 @@ func ExampleCone() {
 	// ChiBarSquared(0.5, 0.5), p = 0.0339
 	// inequalities take part: the law is a mixture
 }
+
+// The mixture is far off for few groups: the exact law of this design needs no fits.
+func ExampleVarianceComponent() {
+	law, err := lrt.OneWayVariance([]int{3, 3, 3, 3}, false)
+	if err != nil {
+		log.Fatal(err)
+	}
+	law.Draws = 4999
+	observed := lrt.Pair{Full: lrt.Fit{N: 12, LogLikelihood: 3.33672933 / 2}}
+	t, err := law.Refer(context.Background(), lrt.Comparison{}, observed, &lrt.Settings{Seed: 1})
+	if err != nil {
+		log.Fatal(err)
+	}
+	fmt.Printf("p = %.3f\n", t.P)
+	// Output:
+	// p = 0.018
+}

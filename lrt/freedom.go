@@ -71,7 +71,9 @@ func (d *Declared) lostAt(ctx context.Context, used *problem, at Fit) (names []s
 	}
 	p.settle(f)
 	curv := make([]float64, co.m*co.m)
-	p.survey(u, f, curv)
+	if p != used { // else the fit has left good units
+		p.survey(u, f, curv)
+	}
 	if !p.gradient && !p.each && co.m > 6 {
 		// A full set of second differences would cost more than the fits: single parameters only.
 		for j := range co.m {
@@ -111,8 +113,8 @@ func (d *Declared) lostAt(ctx context.Context, used *problem, at Fit) (names []s
 // idle reports whether coordinate j alone changes nothing.
 func (p *problem) idle(u []float64, f float64, j int) bool {
 	v := append([]float64(nil), u...)
-	for _, t := range []float64{1, -1} {
-		v[j] = u[j] + t*10*p.scale[j]
+	for _, t := range []float64{3, -3, 30, -30} { // the first that shows a change is enough
+		v[j] = u[j] + t*p.scale[j]
 		if g := p.value(v); math.IsNaN(g) || math.Abs(g-f) > 1e-7 {
 			return false
 		}
