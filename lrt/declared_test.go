@@ -846,3 +846,35 @@ func TestSolveBy(t *testing.T) {
 		t.Errorf("wrong type: %v", err)
 	}
 }
+
+// Sandwich of a normal sample: s/√n for the mean, √((m₄ − s⁴)/n)/(2s) for the spread.
+func TestRobustStandardErrors(t *testing.T) {
+	d := gammaGroups(80, 1, 1, 9) // far from normal
+	for _, with := range []parts{withStart | withEach, withStart | withEach | withGradient} {
+		s := mustBind(t, normalModel(1, with), d, 80)
+		fit, err := s.Maximize(bg)
+		if err != nil {
+			t.Fatal(err)
+		}
+		e, err := s.Estimates(bg, fit)
+		if err != nil {
+			t.Fatal(err)
+		}
+		mean := sum(d.y) / 80
+		var m2, m4 float64
+		for _, v := range d.y {
+			e := (v - mean) * (v - mean)
+			m2, m4 = m2+e/80, m4+e*e/80
+		}
+		near(t, "mean", e.Robust[0], math.Sqrt(m2/80), 1e-5)
+		near(t, "sd", e.Robust[1], math.Sqrt((m4-m2*m2)/80)/(2*math.Sqrt(m2)), 1e-5)
+	}
+	s := mustBind(t, normalModel(1, withStart), d, 80)
+	fit, err := s.Maximize(bg)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if e, err := s.Estimates(bg, fit); err != nil || e.Robust != nil {
+		t.Errorf("%v, %v", e.Robust, err)
+	}
+}

@@ -18,7 +18,12 @@ type Estimates struct {
 	StdErr []float64
 	// Covariance is row-major, len(Names) squared; NaN where StdErr is not finite.
 	Covariance []float64
-	Warnings   []Warning
+	// Robust are standard errors that do not trust the model's variance: the
+	// sandwich of the information around the sum of the outer products of the
+	// observations' scores (Huber 1967; White 1982). nil unless the model has
+	// Each. Far from StdErr they say that the model is wrong, and χ² of λ with it.
+	Robust   []float64
+	Warnings []Warning
 }
 
 // Estimates returns the parameters of a fit of this space, in the names of
@@ -52,8 +57,16 @@ func (d *Declared) Estimates(ctx context.Context, fit Fit) (Estimates, error) {
 	for k := range n {
 		e.StdErr[k] = math.Sqrt(e.Covariance[k*n+k])
 	}
+	if d.core.each != nil && q.p.co.m > 0 {
+		if e.Robust, err = q.sandwich(d, n); err != nil {
+			return e, err
+		}
+	}
 	mark := func(k int, v float64) {
 		e.StdErr[k] = v
+		if e.Robust != nil {
+			e.Robust[k] = v
+		}
 		for l := range n {
 			e.Covariance[k*n+l], e.Covariance[l*n+k] = nan, nan
 		}
@@ -80,6 +93,46 @@ func (d *Declared) Estimates(ctx context.Context, fit Fit) (Estimates, error) {
 		e.Warnings = append(e.Warnings, Warning{"not-identifiable", "the data do not determine " + strings.Join(q.flat, ", ")})
 	}
 	return e, ev.err
+}
+
+// sandwich returns robust standard errors of the frame's n parameters, nil
+// where the scores cannot be had.
+func (q *peak) sandwich(d *Declared, n int) ([]float64, error) {
+	ev := &evaluator{ctx: q.p.ev.ctx, core: d.core, audited: true, noGradient: true}
+	p := newProblem(ev, q.p.co)
+	if !p.each {
+		return nil, nil
+	}
+	copy(p.scale, q.p.scale)
+	m := p.co.m
+	f := p.value(q.u)
+	if math.IsNaN(f) {
+		return nil, ev.err
+	}
+	p.settle(f)
+	g, meat := make([]float64, m), make([]float64, m*m)
+	inv, ok := invertInformation(q.info, m)
+	if !ok || !p.slope(q.u, f, nil, g) {
+		return nil, ev.err
+	}
+	for j := range m {
+		for k := range m {
+			meat[j*m+k] = dot(p.score[j], p.score[k])
+		}
+	}
+	p.co.point(q.u, p.at[0])
+	out := make([]float64, n)
+	for k, b := range p.co.basis {
+		// v = I⁻¹ times the gradient of parameter k; its variance is v' meat v.
+		v := make([]float64, m)
+		for i := range m {
+			for j, w := range b {
+				v[i] += inv[i*m+j] * w * p.co.dz[j]
+			}
+		}
+		out[k] = math.Sqrt(quadratic(meat, v))
+	}
+	return out, nil
 }
 
 // located rebuilds the peak of a fit with a fresh evaluator, free coordinates
