@@ -149,3 +149,34 @@ func ExampleContrastResult_Standardized() {
 	// Output:
 	// 2.373 error SDs (unbiased 2.190), 90 % interval 1.05 to 3.61
 }
+
+func ExampleRow_Effect() {
+	ctx := context.Background()
+	data, err := readTiles(ctx)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	rows, err := anova.OneWay(ctx, data, "strength", "resin", nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	table, err := anova.Tabulate(ctx, rows, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	row := table.Rows()[0]
+	effect, err := row.Effect(0.95)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	fmt.Println(row)
+	fmt.Printf("share of the variance %.2f (ω²), %.0f %% interval %.2f to %.2f, over %s\n",
+		effect.Omega, 100*effect.Level, effect.Lower, effect.Upper, effect.Of)
+	// Output:
+	// resin: F(1, 10) = 16.9004, p = 0.002107 (exact); strength by constant, against strength by constant + resin
+	// share of the variance 0.57 (ω²), 90 % interval 0.22 to 0.77, over rows, n = 12
+}

@@ -124,7 +124,7 @@ func (f Family) Report() Report {
 			{"tests", "tests:", Number(float64(counted))},
 			{"level", "level", percent(f.level)},
 			{"dimension", "", Number(f.dimension).because("not-tested")},
-			{"all_equal_f", "all equal: F =", Number(t.Statistic).because("not-tested")},
+			{"all_equal_f", "all equal: " + t.Name + " =", Number(t.Statistic).because("not-tested")},
 			{"all_equal_df", "", Number(d1).because("not-tested")},
 			{"df_error", "", Number(d2).because("not-tested")},
 			{"all_equal_p", "p =", probability(t.P, t.LogP).because("not-tested")},

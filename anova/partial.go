@@ -2,6 +2,7 @@ package anova
 
 import (
 	"context"
+	"fmt"
 	"strings"
 
 	"subsume.example/glm"
@@ -25,6 +26,13 @@ func partial(ctx context.Context, largest *glm.Model, factors []string, sets [][
 	cells, err := CountCells(ctx, largest.Source(), factors, w)
 	if err != nil {
 		return nil, err
+	}
+	seen := make(map[string]bool)
+	for _, name := range largest.Coefficients() {
+		if seen[name] {
+			return nil, &LayoutError{Place: name, Err: fmt.Errorf("%w: two columns of the model have this name; rename a level or a factor", ErrLayout)}
+		}
+		seen[name] = true
 	}
 	empty := cells.Empty()
 	columns := cellColumns(largest, cells)

@@ -4,6 +4,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode"
 
 	"subsume.example/lrt"
 )
@@ -185,11 +186,21 @@ func (r Report) cells(c int) []string {
 	}
 	for i, l := range r.Lines {
 		v := l[c]
-		if text[i] = v.String(); places >= 0 && v.Text == "" && v.Numeric && !math.IsNaN(v.Number) && !math.IsInf(v.Number, 0) {
+		if text[i] = oneLine(v.String()); places >= 0 && v.Text == "" && v.Numeric && !math.IsNaN(v.Number) && !math.IsInf(v.Number, 0) {
 			text[i] = strings.Replace(strconv.FormatFloat(v.Number, 'f', places, 64), "-", "−", 1)
 		}
 	}
 	return text
+}
+
+// oneLine writes control characters as spaces: a name may hold a line end.
+func oneLine(s string) string {
+	return strings.Map(func(c rune) rune {
+		if unicode.IsControl(c) {
+			return ' '
+		}
+		return c
+	}, s)
 }
 
 // places returns how many decimals show 6 digits of the largest number of a

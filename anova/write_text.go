@@ -20,7 +20,7 @@ func (r Report) WriteText(w io.Writer) error {
 func (r Report) Text() string {
 	var b strings.Builder
 	if r.Title != "" {
-		b.WriteString(r.Title + "\n")
+		b.WriteString(oneLine(r.Title) + "\n")
 	}
 	var facts []string
 	for _, f := range r.Facts {
@@ -57,11 +57,12 @@ func (r Report) grid(b *strings.Builder) {
 		if num {
 			alignPoints(text)
 		}
-		width := utf8.RuneCountInString(r.Columns[c].Title)
+		title := oneLine(r.Columns[c].Title)
+		width := utf8.RuneCountInString(title)
 		for _, s := range text {
 			width = max(width, utf8.RuneCountInString(s))
 		}
-		for i, s := range append([]string{r.Columns[c].Title}, text...) {
+		for i, s := range append([]string{title}, text...) {
 			space := strings.Repeat(" ", width-utf8.RuneCountInString(s))
 			if num {
 				s = space + s

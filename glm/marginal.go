@@ -207,7 +207,11 @@ func (r *RowMeans) Equation(w []float64, value float64) (lrt.Equation, error) {
 	}
 	var e lrt.Equation
 	for _, c := range list {
-		e.Names, e.Coef = append(e.Names, r.f.Model.cols[c.term].Names[c.column]), append(e.Coef, c.coef.Float64())
+		name := r.f.Model.cols[c.term].Names[c.column]
+		if t, k, _ := r.f.Model.coefficient(name); t != c.term || k != c.column {
+			return e, &CoefficientError{Name: name, Err: fmt.Errorf("%w: two columns of the model have this name", lrt.ErrInvalid)}
+		}
+		e.Names, e.Coef = append(e.Names, name), append(e.Coef, c.coef.Float64())
 	}
 	e.Value = dd.From(value).Sub(offset).Float64()
 	if len(e.Names) == 0 {
