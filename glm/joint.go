@@ -142,7 +142,7 @@ func (j *joint) init(ctx context.Context, models []*Model, eliminate bool, rando
 		if err := first.obs.Check(m.obs); err != nil {
 			return err
 		}
-		if m.opt.KnownVariance != first.opt.KnownVariance || m.opt.Weights.Kind != first.opt.Weights.Kind {
+		if i < fitted && (m.opt.KnownVariance != first.opt.KnownVariance || m.opt.Weights.Kind != first.opt.Weights.Kind) {
 			return fmt.Errorf("glm: %w: known variance and kind of weights differ", lrt.ErrDifferentCriterion)
 		}
 		p := 0
