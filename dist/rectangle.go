@@ -43,17 +43,22 @@ const (
 	RectangleProduct RectangleMethod = iota
 	// RectangleThree: any three values, with one more integral, over the first of them.
 	RectangleThree
+	// RectanglePlane: correlations of rank one or two, such as the three
+	// differences of three means. One integral across a polygon.
+	RectanglePlane
 	// RectangleLattice: randomized lattice rule with an error estimate.
 	RectangleLattice
 )
 
-// String returns "product", "three" or "lattice".
+// String returns "product", "three", "plane" or "lattice".
 func (m RectangleMethod) String() string {
 	switch m {
 	case RectangleProduct:
 		return "product"
 	case RectangleThree:
 		return "three"
+	case RectanglePlane:
+		return "plane"
 	case RectangleLattice:
 		return "lattice"
 	}
@@ -84,7 +89,7 @@ type RectangleProbability struct {
 }
 
 // Probability finds the probability of the rectangle. Product correlations,
-// one or two values and any three values are integrated deterministically,
+// one or two values, any three values, and correlations of rank two are integrated deterministically,
 // everything else by a randomized lattice rule (see the lattice source for the
 // transformation). The same seed gives the same bits whatever the number of workers.
 //
@@ -103,11 +108,36 @@ func (r Rectangle) Probability(ctx context.Context, s *RectangleSettings) (Recta
 	}
 	if !s.Simulate {
 		if u := r.exact(); u != nil {
-			p := u.probability(r.Nu)
-			return p, nil
+			return u.probability(r.Nu), nil
 		}
 	}
-	return r.lattice(ctx, s)
+	f, err := r.latticeForm()
+	if err != nil {
+		return RectangleProbability{}, err
+	}
+	if len(f.columns) == 0 {
+		return RectangleProbability{Inside: 1}, nil // no limits at all
+	}
+	if !s.Simulate {
+		if p := newPlaneRegion(f); p != nil {
+			u := unitRectangle{plane: p, values: len(r.Lower), largest: r.largest()}
+			return u.probability(r.Nu), nil
+		}
+	}
+	return r.lattice(ctx, f, s)
+}
+
+// largest returns the largest modulus of a finite limit.
+func (r Rectangle) largest() float64 {
+	m := 0.0
+	for i := range r.Lower {
+		for _, v := range [2]float64{r.Lower[i], r.Upper[i]} {
+			if !math.IsInf(v, 0) {
+				m = math.Max(m, math.Abs(v))
+			}
+		}
+	}
+	return m
 }
 
 // Validate returns an error that names the first limit, parameter or entry
@@ -206,10 +236,11 @@ func productForm(c mat.Symmetric) []float64 {
 }
 
 // unitRectangle is a rectangle whose limits are scaled by w: a product, or
-// three values of which the first is integrated over.
+// three values of which the first is integrated over, or a polygon.
 type unitRectangle struct {
 	product product
 	three   *threeValues
+	plane   *planeRegion
 	values  int
 	largest float64 // the largest finite limit
 }
@@ -217,14 +248,7 @@ type unitRectangle struct {
 // exact returns the deterministic form of the rectangle, nil when it has none.
 func (r Rectangle) exact() *unitRectangle {
 	n := len(r.Lower)
-	u := &unitRectangle{values: n}
-	for i := range n {
-		for _, v := range [2]float64{r.Lower[i], r.Upper[i]} {
-			if !math.IsInf(v, 0) {
-				u.largest = math.Max(u.largest, math.Abs(v))
-			}
-		}
-	}
+	u := &unitRectangle{values: n, largest: r.largest()}
 	if l := productForm(r.Correlation); l != nil {
 		groups := make([]productGroup, 0, n)
 	next:
@@ -250,8 +274,11 @@ func (r Rectangle) exact() *unitRectangle {
 
 // tails returns P(all inside) and P(some outside) with all limits times w.
 func (u *unitRectangle) tails(w float64) (in, out tail) {
-	if u.three != nil {
+	switch {
+	case u.three != nil:
 		return u.three.tails(w)
+	case u.plane != nil:
+		return u.plane.tails(w)
 	}
 	in, _ = u.product.inside(w, false)
 	if out = (tail{1 - in.value(), 0}); out.mant < 0.1 {
@@ -265,8 +292,11 @@ func (u *unitRectangle) tails(w float64) (in, out tail) {
 // out only where g alone is negligible.
 func (u *unitRectangle) probability(nu float64) RectangleProbability {
 	p := RectangleProbability{Method: RectangleProduct}
-	if u.three != nil {
+	switch {
+	case u.three != nil:
 		p.Method = RectangleThree
+	case u.plane != nil:
+		p.Method = RectanglePlane
 	}
 	if math.IsInf(nu, 1) {
 		in, out := u.tails(1)

@@ -269,3 +269,35 @@ func BenchmarkRectangle(b *testing.B) {
 		})
 	}
 }
+
+// TestRectanglePlane: three means of equal variances (studentized range), unequal ones
+// against the lattice, perfectly correlated values, and a half plane.
+func TestRectanglePlane(t *testing.T) {
+	inf := math.Inf(1)
+	for _, nu := range []float64{inf, 14, 0.6} {
+		for _, x := range []float64{0.02, 1.1, 3, 11} {
+			c, n := differencesOfMeans([]float64{2, 2, 2})
+			p := mustRectangle(t, Rectangle{same(n, -x), same(n, x), c, nu}, nil)
+			d := StudentizedRange{3, nu}
+			if e := math.Max(relErr(p.Inside, d.CDF(x*math.Sqrt2)), relErr(p.Outside, d.Survival(x*math.Sqrt2))); p.Method != RectanglePlane || e > 1e-10 {
+				t.Errorf("nu=%v x=%v: %+v, want %v and %v, error %.2g", nu, x, p, d.CDF(x*math.Sqrt2), d.Survival(x*math.Sqrt2), e)
+			}
+		}
+		c, n := differencesOfMeans([]float64{1, 4, 25})
+		r := Rectangle{same(n, -1.7), []float64{2, inf, 1.9}, c, nu}
+		p, q := mustRectangle(t, r, nil), mustRectangle(t, r, &RectangleSettings{Simulate: true, Target: 3e-5})
+		if p.Method != RectanglePlane || math.Abs(p.Inside-q.Inside) > q.Error {
+			t.Errorf("nu=%v: %+v, lattice %+v", nu, p, q)
+		}
+		st := StudentT{nu}
+		one := mustRectangle(t, Rectangle{[]float64{-1, -2}, []float64{1.5, 1}, equicorrelated(2, 1), nu}, nil)
+		if want := st.CDF(1) - st.CDF(-1); relErr(one.Inside, want) > 1e-10 {
+			t.Errorf("nu=%v: %+v, want %v", nu, one, want)
+		}
+		// Equal limits beyond reach leave one value: P(T1 > 2).
+		half := mustRectangle(t, Rectangle{[]float64{2, -inf, -inf}, []float64{inf, inf, inf}, c, nu}, nil)
+		if want := st.Survival(2); relErr(half.Inside, want) > 1e-10 {
+			t.Errorf("nu=%v: %+v, want %v", nu, half, want)
+		}
+	}
+}

@@ -117,11 +117,7 @@ func dot(a, b []float64) float64 {
 }
 
 // lattice runs rules of growing size until the error estimate meets the target.
-func (r Rectangle) lattice(ctx context.Context, s *RectangleSettings) (RectangleProbability, error) {
-	f, err := r.latticeForm()
-	if err != nil {
-		return RectangleProbability{}, err
-	}
+func (r Rectangle) lattice(ctx context.Context, f *latticeForm, s *RectangleSettings) (RectangleProbability, error) {
 	if !math.IsInf(r.Nu, 1) {
 		f.scale = newScaleTable(r.Nu)
 	}
@@ -132,10 +128,7 @@ func (r Rectangle) lattice(ctx context.Context, s *RectangleSettings) (Rectangle
 	if most <= 0 {
 		most = 16000000
 	}
-	p := RectangleProbability{Method: RectangleLattice, Inside: 1}
-	if len(f.columns) == 0 {
-		return p, nil
-	}
+	p := RectangleProbability{Method: RectangleLattice}
 	done := 0
 	for i := range latticeRules {
 		rule := &latticeRules[i]
