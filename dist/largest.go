@@ -59,7 +59,8 @@ type LargestQuantile struct {
 // regula falsi in the Illinois form on log P between the quantiles of one statistic at q
 // and at q/n (Bonferroni), which enclose it. All evaluations share
 // the random shifts of the lattice, so that the simulated probability is a
-// smooth function of x. Errors are those of Rectangle.Probability; with
+// smooth function of x; a loose search comes first, one or two evaluations at the
+// target correct it. Errors are those of Rectangle.Probability; with
 // ErrTolerance the value is valid and Error says how far.
 func (l Largest) UpperQuantile(ctx context.Context, q float64, s *RectangleSettings) (LargestQuantile, error) {
 	if err := l.Validate(); err != nil {
@@ -86,8 +87,15 @@ func (l Largest) UpperQuantile(ctx context.Context, q float64, s *RectangleSetti
 	a, b := t.UpperQuantile(one), t.UpperQuantile(one/float64(n))
 	var r LargestQuantile
 	var doubt error
-	slope, perr := 0.0, 0.0
-	f := func(x float64) (float64, error) {
+	perr := 0.0
+	// Search with a loose target, where a target matters, then correct.
+	target := s.Target
+	if !(target > 0) {
+		target = 1e-6
+	}
+	loose := *s
+	loose.Target = math.Max(target, 0.01*q)
+	f := func(x float64, s *RectangleSettings) (float64, error) {
 		p, err := l.Rectangle(x).Probability(ctx, s)
 		if err != nil && p.Points == 0 {
 			return 0, err
@@ -97,47 +105,58 @@ func (l Largest) UpperQuantile(ctx context.Context, q float64, s *RectangleSetti
 		r.Points += p.Points
 		return math.Log(math.Max(p.Outside, 1e-300) / q), nil
 	}
-	fa, err := f(a)
+	fa, err := f(a, &loose)
 	if err != nil {
 		return r, err
 	}
-	fb, err := f(b)
+	fb, err := f(b, &loose)
 	if err != nil {
 		return r, err
 	}
-	for range 40 {
-		if fa <= 0 || fb >= 0 { // equal within the error already
-			if fa <= 0 {
-				b, fb = a, fa
+	slope := (fb - fa) / (b - a)
+	last, flast := b, fb
+	if fa <= 0 {
+		r.X = a // equal within the error already
+	} else if fb >= 0 {
+		r.X = b
+	} else {
+		for range 60 {
+			x := a - fa*(b-a)/(fb-fa)
+			if !(x > a && x < b) {
+				x = 0.5 * (a + b)
 			}
-			r.X = b
-			break
+			fx, err := f(x, &loose)
+			if err != nil {
+				return r, err
+			}
+			if d := x - last; math.Abs(d) > 1e-9*math.Abs(x) && math.Abs(fx-flast) > 10*perr/q {
+				slope = (fx - flast) / d
+			}
+			r.X, last, flast = x, x, fx
+			if math.Abs(fx) <= math.Max(1e-13, perr/q) || b-a <= 1e-14*math.Abs(x) {
+				break
+			}
+			if fx > 0 {
+				a, fa = x, fx
+				fb *= 0.5
+			} else {
+				b, fb = x, fx
+				fa *= 0.5
+			}
 		}
-		slope = (fb - fa) / (b - a)
-		x := a - fa/slope
-		if !(x > a && x < b) {
-			x = 0.5 * (a + b)
-		}
-		fx, err := f(x)
+	}
+	for n := 0; n < 3 && r.Method == RectangleLattice && loose.Target > target && slope < 0; n++ {
+		fx, err := f(r.X, s)
 		if err != nil {
 			return r, err
 		}
-		r.X = x
-		near := math.Max(1e-12, 0.05*perr/q)
-		if math.Abs(fx) <= near || b-a <= 1e-13*math.Abs(x) {
+		r.X -= fx / slope
+		if math.Abs(fx) < 10*perr/q { // the slope is good to a tenth
 			break
 		}
-		if fx > 0 {
-			if a, fa = x, fx; fb < 0 {
-				fb *= 0.5
-			}
-		} else {
-			b, fb = x, fx
-			fa *= 0.5
-		}
 	}
-	if slope != 0 {
-		r.Error = perr / q / math.Abs(slope)
+	if slope < 0 {
+		r.Error = 1.5 * perr / q / -slope
 	}
 	if doubt != nil {
 		return r, fmt.Errorf("dist: Largest: critical value %v ± %.2g: %w", r.X, r.Error, doubt)
