@@ -25,7 +25,8 @@ type invertible interface {
 // The tail with the smaller target is inverted (for p > 1/2 the other one at 1-p,
 // which is exact). Newton's iteration runs on the logarithm of the tail over log x
 // (asinh x on the whole line), where the laws of this package are concave and
-// close to straight far out; a bracket is kept, and a step that leaves it, or
+// close to straight far out, sped up by inverse Hermite interpolation between
+// the last two points; a bracket is kept, and a step that leaves it, or
 // two steps that fail to halve it, give way to bisection over the ordered
 // floats, which ends after at most 64 steps whatever the law.
 func invertTail[L invertible](law L, p float64, upper bool, start float64) float64 {
@@ -57,6 +58,7 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		}
 	}
 	slow := 0
+	var lastR, lastStep, lastNewton float64 // lastStep is 0 after bisection
 	best, bestR := x, math.Inf(1)
 	for range 130 {
 		tail, logTail, hazard := law.tailAt(x, upper)
@@ -108,6 +110,19 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 		if !upper {
 			step = -step
 		}
+		newton := step
+		// From the second point on: the cubic through both points and their slopes, u as a function of r.
+		if math.Abs(r) < 0.5*math.Abs(lastR) && lastStep != 0 {
+			d1, d0 := -newton/r, -lastNewton/lastR // du/dr
+			dr := lastR - r
+			m := -lastStep / dr
+			c1 := (m - d1) / dr
+			c2 := ((d0-m)/dr - c1) / dr
+			s := newton + r*r*(c1-c2*lastR)
+			if q := s / newton; q > 0.5 && q < 2 {
+				step = s
+			}
+		}
 		var next float64
 		switch {
 		case math.Abs(step) < 1e-9:
@@ -135,7 +150,9 @@ func invertTail[L invertible](law L, p float64, upper bool, start float64) float
 			// near 1 (or 0 on the whole line).
 			next = fromOrder(a + int64(uint64(b-a)/2))
 			slow = 0
+			step = 0
 		}
+		lastR, lastStep, lastNewton = r, step, newton
 		x = next
 	}
 	// A root beyond the floats is an end of the support: 0 or infinite.
