@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"sort"
 	"strings"
 
 	"gonum.org/v1/gonum/mat"
@@ -108,6 +109,7 @@ func (d *Declared) cone(ctx context.Context, small *Declared, p *Pair) error {
 			}
 		}
 	}
+	cut = d.frame.independentEdges(cut, p.Restricted)
 	switch {
 	case len(fixed) == 0 && len(cut) == 0:
 		return nil
@@ -208,6 +210,29 @@ func (f *frame) cutInside(larger *frame) []edge {
 		}
 	}
 	return es
+}
+
+// independentEdges keeps one edge of each parameter, the nearer to the estimate,
+// and leaves out those that depend on others under f's equations.
+func (f *frame) independentEdges(es []edge, at Fit) []edge {
+	if at.detail != nil {
+		x := at.detail.peak.x
+		sort.SliceStable(es, func(a, b int) bool {
+			return math.Abs(x[es[a].param]-es[a].value) < math.Abs(x[es[b].param]-es[b].value)
+		})
+	}
+	var out []edge
+	eq := f.eq
+	for _, e := range es {
+		row := make([]float64, len(f.params))
+		row[e.param] = 1
+		if next, st := eq.add(row, e.value); st == independent {
+			eq = next
+			out = append(out, e)
+		}
+	}
+	sort.SliceStable(out, func(a, b int) bool { return out[a].param < out[b].param })
+	return out
 }
 
 // edgeCovariance returns the covariance of the inward distances of es from

@@ -185,3 +185,35 @@ func TestNuisanceOnBoundaryMakesNoClaim(t *testing.T) {
 		t.Errorf("irregular %q, χ² %+v", r.Pair.Irregular, r.ChiSquared)
 	}
 }
+
+// Critical values of ½χ²(k − 1) + ½χ²(k) (Kodde and Palm 1986, Table I).
+func TestPublishedMixture(t *testing.T) {
+	f := load(t, "lrt-chibar-a")
+	for i, k := range f.column(t, "k") {
+		law, _, err := (&Cone{Names: []string{"a"}, Covariance: []float64{1}, Interior: int(k) - 1}).law(bg, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		near(t, "5 %", law.UpperQuantile(0.05), f.exact(t, "critical_0.05")[i], 1e-10)
+		near(t, "1 %", law.UpperQuantile(0.01), f.exact(t, "critical_0.01")[i], 1e-10)
+	}
+}
+
+// Two bounds on one parameter, and bounds on parameters that are equal, are one edge.
+func TestDependentEdges(t *testing.T) {
+	free := mustBind(t, pairOfMeans(0.3, -inf), [2]float64{-0.2, 0.4}, 10)
+	equal := mustRestrict(t, free, Equate("a", "b"))
+	for _, c := range []struct{ small, full *Declared }{
+		{mustRestrict(t, free, AtLeast("a", 0), AtMost("a", 3)), free},
+		{mustRestrict(t, equal, AtLeast("a", 0), AtLeast("b", 0)), equal},
+		{mustRestrict(t, equal, AtLeast("a", 0), AtLeast("b", 0.1)), equal},
+	} {
+		r, err := Compare(bg, c.small, c.full, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if w := weights(t, r); len(w) != 2 || w[0] != 0.5 {
+			t.Errorf("%v: weights %v", c.small, w)
+		}
+	}
+}

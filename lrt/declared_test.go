@@ -878,3 +878,26 @@ func TestRobustStandardErrors(t *testing.T) {
 		t.Errorf("%v, %v", e.Robust, err)
 	}
 }
+
+// User code may write to theta, and must fill every term of Each.
+func TestUserCodeThatWritesOrForgets(t *testing.T) {
+	d := normalGroups(20, 1, 1, 1, 4)
+	m := normalModel(1, withStart|withGradient)
+	ll := m.LogLikelihood
+	m.LogLikelihood = func(d grouped, th []float64) float64 {
+		v := ll(d, th)
+		th[0], th[1] = 99, -1
+		return v
+	}
+	fit, err := mustBind(t, m, d, 20).Maximize(bg)
+	if err != nil || math.Abs(fit.LogLikelihood-normalBest(d)) > 1e-9 || len(fit.Warnings) > 0 {
+		t.Errorf("%v, %v, %v", fit, fit.Warnings, err)
+	}
+	m = normalModel(1, withStart|withEach)
+	each := m.Each
+	m.LogLikelihood = nil
+	m.Each = func(d grouped, th, e []float64) { each(grouped{d.y[:19], d.g, d.k}, th, e) }
+	if _, err := mustBind(t, m, d, 20).Maximize(bg); !errors.Is(err, ErrNoStart) {
+		t.Errorf("a forgotten term: %v", err)
+	}
+}

@@ -109,6 +109,9 @@ func (e Equation) words() string {
 
 // restrict returns the frame with one more restriction.
 func (f *frame) restrict(r Restriction) (*frame, error) {
+	if len(r.Equations) == 0 && len(r.Bounds) == 0 && r.Via == nil {
+		return nil, &RestrictionError{"(empty)", fmt.Errorf("%w: it restricts nothing (Equate needs at least two names)", ErrInvalid)}
+	}
 	g := f.clone()
 	for _, e := range r.Equations {
 		a, b, err := g.equation(e)

@@ -248,10 +248,17 @@ type evaluator struct {
 	ctx   context.Context
 	core  *core
 	calls int
+	loan  []float64
 	// what was found wrong with the model's functions, so that they are not used
 	noGradient, noHessian, noEach, audited bool
 	warnings                               []Warning
 	err                                    error
+}
+
+// lent is a copy of theta that user code may write to without harm.
+func (e *evaluator) lent(theta []float64) []float64 {
+	e.loan = append(e.loan[:0], theta...)
+	return e.loan
 }
 
 func (e *evaluator) fail(fn string, theta []float64, err error) {
@@ -294,10 +301,10 @@ func (e *evaluator) value(theta []float64) (v float64) {
 	defer e.guard("LogLikelihood", theta)
 	if e.core.logLik == nil {
 		each := make([]float64, e.core.n)
-		e.core.each(theta, each)
+		e.core.each(e.lent(theta), each)
 		v = sum(each)
 	} else {
-		v = e.core.logLik(theta)
+		v = e.core.logLik(e.lent(theta))
 	}
 	return e.sane(v, theta)
 }
@@ -309,7 +316,10 @@ func (e *evaluator) rows(theta, each []float64) (v float64) {
 	}
 	v = nan
 	defer e.guard("Each", theta)
-	e.core.each(theta, each)
+	for i := range each {
+		each[i] = nan // a term that is forgotten must not be a stale one
+	}
+	e.core.each(e.lent(theta), each)
 	return e.sane(sum(each), theta)
 }
 
@@ -331,7 +341,7 @@ func (e *evaluator) grad(theta, g []float64) bool {
 	}
 	e.calls-- // counted, but a gradient is no evaluation of the likelihood
 	defer e.guard("Gradient", theta)
-	e.core.gradient(theta, g)
+	e.core.gradient(e.lent(theta), g)
 	return e.err == nil && finite(g)
 }
 
@@ -340,7 +350,7 @@ func (e *evaluator) information(theta, info []float64) bool {
 		return false
 	}
 	defer e.guard("Information", theta)
-	e.core.expected(theta, info)
+	e.core.expected(e.lent(theta), info)
 	return e.err == nil && finite(info)
 }
 
@@ -349,6 +359,6 @@ func (e *evaluator) hess(theta, h []float64) bool {
 		return false
 	}
 	defer e.guard("Hessian", theta)
-	e.core.hessian(theta, h)
+	e.core.hessian(e.lent(theta), h)
 	return e.err == nil && finite(h)
 }

@@ -62,6 +62,7 @@ func TestRestrictionErrors(t *testing.T) {
 		{"bound against range", []Restriction{AtLeast("p", 2)}, ErrContradiction, "p ≥ 2"},
 		{"NaN", []Restriction{Fix("a", math.NaN())}, ErrInvalid, "finite"},
 		{"zero equation", []Restriction{Equations(Equation{[]string{"a", "a"}, []float64{1, -1}, 0})}, ErrInvalid, "every coefficient is 0"},
+		{"equating one", []Restriction{Equate("a")}, ErrInvalid, "at least two names"},
 		{"lengths", []Restriction{Equations(Equation{[]string{"a"}, nil, 0})}, ErrInvalid, "1 names and 0 coefficients"},
 		{"bad bound", []Restriction{AtLeast("a", math.NaN())}, ErrInvalid, "not a number"},
 		{"map without function", []Restriction{Via(Map{Params: []Param{Real("u")}})}, ErrInvalid, "no function"},
