@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 
 	"subsume.example/internal/decimal"
 )
@@ -251,10 +252,20 @@ func (c *Column) buildNumbers() (column, error) {
 	return k, nil
 }
 
-// stands reports whether x + low is declared to stand for "missing".
+// stands reports whether x + low is declared to stand for "missing": −99.9 does
+// as the float64 and as the decimal.
 func (c *Column) stands(x, low float64) bool {
 	for _, v := range c.numbers {
-		if v == x && low == 0 || math.IsNaN(v) && math.IsNaN(x) {
+		if math.IsNaN(v) && math.IsNaN(x) {
+			return true
+		}
+		if v != x {
+			continue
+		}
+		if low == 0 {
+			return true
+		}
+		if _, rest, _ := decimal.ParseString(strconv.FormatFloat(v, 'g', -1, 64)); rest == low {
 			return true
 		}
 	}

@@ -103,13 +103,14 @@ func TestMissing(t *testing.T) {
 	d := mustData(t,
 		SharedNumbers("s", shared).MissingNumbers(-99, nan),
 		Decimals("d", []string{"0.1", "NA", "-99"}).MissingTexts("NA").MissingNumbers(-99),
+		Decimals("e", []string{"0.1", "-99.9", "-99.90000000000000000001"}).MissingNumbers(-99.9),
 		Labels("g", []string{"a", "", "?"}).MissingTexts("", "?"),
 		Levels("l", []int{7, 8, 7}).MissingRows([]bool{false, true, false}),
 		Integers("i", []int{1, 2, 3}).MissingRows([]bool{true, false, false}))
 	if shared[0] != -99 {
 		t.Error("a shared slice was written to")
 	}
-	for name, want := range map[string]int{"s": 2, "d": 2, "g": 2, "l": 1, "i": 1, "none": 0} {
+	for name, want := range map[string]int{"s": 2, "d": 2, "e": 1, "g": 2, "l": 1, "i": 1, "none": 0} {
 		if got := d.Missing(name); got != want {
 			t.Errorf("Missing(%q) = %d, want %d", name, got, want)
 		}
