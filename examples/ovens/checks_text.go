@@ -110,7 +110,7 @@ func (s *study) strip(p *page) {
 		put(-reach, '|')
 		put(reach, '|')
 		put(m, '●')
-		t.row(fmt.Sprintf("%s to %s", s.where(from), s.where(to-1)), string(line)+" "+dec(m, 2))
+		t.row(fmt.Sprintf("lines %s to %s", s.where(from), s.where(to-1)), string(line)+" "+dec(m, 2))
 	}
 	t.end()
 }

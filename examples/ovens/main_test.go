@@ -66,7 +66,7 @@ func TestRecord(t *testing.T) {
 	var first []byte
 	for i := range 2 {
 		path := filepath.Join(dir, fmt.Sprint(i, ".json"))
-		if code, _, errs := call(t, "", "-record", path); code != 0 {
+		if code, _, errs := call(t, "", "-draws", "199", "-record", path); code != 0 {
 			t.Fatalf("exit %d, %s", code, errs)
 		}
 		b, err := os.ReadFile(path)
@@ -246,7 +246,7 @@ func TestOddData(t *testing.T) {
 		{"perfect fit", "y,g\n1,a\n1,a\n2,b\n2,b\n", []string{"F                    ∞", "not checked"}},
 		{"group of one row", "y,g\n1,a\n2,a\n3,b\n4,b\n9,c\n", []string{"group c has only 1 row"}},
 		{"huge", scaled("e300"), []string{"e+300"}},
-		{"tiny", scaled("e-300"), []string{"e−30"}},
+		{"tiny", scaled("e-300"), []string{"e-30"}},
 		{"missing words and codes", "y,g\n1,10\n2,10\nNA,10\n3,9\n4,9\n6,\n", []string{"y missing: line 4", "g missing: line 7", "9   10"}},
 		{"long names", "y,g\n1," + strings.Repeat("x", 300) + "\n2," + strings.Repeat("x", 300) + "\n3,b\n4,b\n", nil},
 	} {
@@ -336,7 +336,7 @@ func TestFigures(t *testing.T) {
 	for _, c := range []struct {
 		x    float64
 		want string
-	}{{0, "0"}, {1234.5678, "1234.6"}, {-0.00123456, "−0.0012346"}, {1.5e300, "1.5000e+300"}, {-2e-9, "−2.0000e−09"}, {math.Inf(1), "∞"}, {math.Inf(-1), "−∞"}, {math.NaN(), "–"}} {
+	}{{0, "0"}, {1234.5678, "1234.6"}, {-0.00123456, "−0.0012346"}, {1.5e300, "1.5000e+300"}, {-2e-9, "−2.0000e-09"}, {math.Inf(1), "∞"}, {math.Inf(-1), "−∞"}, {math.NaN(), "–"}} {
 		if got := fig(c.x, 5); got != c.want {
 			t.Errorf("fig(%v, 5) = %q, want %q", c.x, got, c.want)
 		}

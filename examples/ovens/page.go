@@ -105,7 +105,7 @@ func fig(x float64, digits int) string {
 	}
 	e := int(math.Floor(math.Log10(math.Abs(x))))
 	if e < -4 || e > 7 {
-		return strings.ReplaceAll(fmt.Sprintf("%.*e", digits-1, x), "-", "−")
+		return sign(fmt.Sprintf("%.*e", digits-1, x))
 	}
 	return sign(fmt.Sprintf("%.*f", max(digits-1-e, 0), x))
 }
@@ -126,13 +126,13 @@ func sign(s string) string {
 	return s
 }
 
-// prob writes a probability: never 0 for what is not 0, never more than four digits.
+// prob writes a probability: never 0 for what is not 0.
 func prob(p, logP float64) string {
 	switch {
 	case math.IsNaN(p):
 		return "unknown"
 	case p > 0:
-		return strings.ReplaceAll(fmt.Sprintf("%.3g", p), "-", "−")
+		return fmt.Sprintf("%.4g", p)
 	case math.IsInf(logP, -1):
 		return "0"
 	}
