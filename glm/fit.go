@@ -195,7 +195,7 @@ func (j *joint) totalSS(m *Model) dd.DD {
 	if k > 0 {
 		yy = yy.Sub(j.gram.RHS(0, k)).Sub(j.gram.RHS(0, k)).Add(j.gram.RHS(k, k))
 	}
-	if c := m.carrier(); c >= 0 && j.shifted {
+	if c := m.carrier(); c >= 0 {
 		n, sums := j.gram.Total(j.group(m.cols[c]))
 		s := sums[0]
 		if k > 0 {

@@ -488,6 +488,10 @@ func TestConstantField(t *testing.T) {
 		{[]glm.Term{glm.Powers{Field: "x", Degree: 2}, c5, one}, "constant"},
 	} {
 		f := fitted(t, model(t, d, nil, c.terms...))
+		mean := fitted(t, model(t, d, nil, one))
+		if relative(f.TotalSS, mean.RSS) > 1e-12 || !(f.RSquared > 0 && f.RSquared < 1) {
+			t.Errorf("%s: total %g, want %g; R² %g", f.Model, f.TotalSS, mean.RSS, f.RSquared)
+		}
 		var aside []string
 		for _, co := range f.Coefficients {
 			if co.Aliased {
