@@ -12,7 +12,9 @@
 // Fukaya 2015). With unit roundoff v = 2^-104 the departure of Q from
 // orthogonality is of order κ²v, κ the condition number of the equilibrated
 // columns, so that it stays below the double precision roundoff up to κ = 10⁷ and R
-// decides ranks to a relative 10⁻¹⁵, the square root of v. The largest index
+// decides ranks to a relative 10⁻¹⁵, the square root of v, times the size of the
+// coefficients that write a column in earlier ones: where these are so large that
+// rounding explains what is left, the column is set aside, and the pivot says so. The largest index
 // group is eliminated first as a diagonal, so that two crossed factors of 1,000
 // levels cost one triangle of 1,000.
 package linalg
