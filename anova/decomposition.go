@@ -19,7 +19,8 @@ const (
 	// Partial: are the equally weighted means of the cells without this effect?
 	// The hypothesis Cμ = 0 is imposed on the means of the cells (with
 	// covariates: on the cells at any one value of them) and does not depend on
-	// coding or counts. It is refused when it touches an empty cell.
+	// coding or counts. It is refused when it touches an empty cell. The work
+	// grows with the third power of the number of cells: 400 cells take two seconds.
 	Partial
 )
 

@@ -50,8 +50,9 @@
 // Means gives the means of groups as observed and by the model, covariates held
 // and other factors averaged as stated. Groups.Test tests contrasts of them: each is
 // the model restricted by one equation, inside the model, so that t² is the F of
-// a comparison; Method says how the family is accounted for, and raw p-values and
-// intervals are always kept beside. Row.Effect and Table.Effects give effect sizes
+// a comparison; Method says how the family is accounted for (Tukey for all pairs,
+// Scheffe for contrasts that the data suggested, Bonferroni or Holm for a few fixed in
+// advance), and raw p-values and intervals are always kept beside. Row.Effect and Table.Effects give effect sizes
 // with intervals, ContrastResult.Standardized differences in error standard deviations.
 //
 // # Planning
@@ -63,8 +64,8 @@
 //
 // # Writing
 //
-// Table, Groups, Family, Power and Size have a Report: one value with WriteText
-// and WriteMarkdown for people and WriteCSV and WriteJSON for programs, whose keys are
+// Table, Groups, Family, Power and Size have a Report: one value with WriteText,
+// WriteMarkdown and WriteHTML for people and WriteCSV and WriteJSON for programs, whose keys are
 // a promise (see each Report method). p is never written as zero unless the fit is perfect.
 // NewRecord makes the account of an analysis that an auditor needs, byte-equal on
 // a rerun.

@@ -333,3 +333,45 @@ func ExampleReport_WriteCSV() {
 	//   "warnings": []
 	// }
 }
+
+func ExampleReport_WriteHTML() {
+	ctx := context.Background()
+	data, err := readTiles(ctx)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	rows, err := anova.OneWay(ctx, data, "strength", "resin", nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	table, err := anova.Tabulate(ctx, rows, nil)
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	if err := table.Report().WriteHTML(os.Stdout); err != nil {
+		fmt.Println(err)
+	}
+	// Output:
+	// <section class="subsume-report" data-schema="anova.table/1">
+	// <h3>What explains strength</h3>
+	// <dl>
+	// <dt>n =</dt><dd>12</dd>
+	// <dt>R² =</dt><dd>0.6283</dd>
+	// </dl>
+	// <table>
+	// <thead><tr><th scope="col">source</th><th scope="col" style="text-align:right">sum of squares</th><th scope="col" style="text-align:right">df</th><th scope="col" style="text-align:right">mean square</th><th scope="col" style="text-align:right">F</th><th scope="col" style="text-align:right">p</th><th scope="col">reading</th><th scope="col" style="text-align:right">log λ</th></tr></thead>
+	// <tbody>
+	// <tr><td>resin</td><td style="text-align:right">134.001</td><td style="text-align:right">1</td><td style="text-align:right">134.001</td><td style="text-align:right">16.9004</td><td style="text-align:right">0.002107</td><td>exact</td><td style="text-align:right">−5.9373</td></tr>
+	// <tr><td>error</td><td style="text-align:right">79.288</td><td style="text-align:right">10</td><td style="text-align:right">7.929</td><td style="text-align:right"></td><td style="text-align:right"></td><td></td><td style="text-align:right"></td></tr>
+	// <tr><td>total</td><td style="text-align:right">213.289</td><td style="text-align:right">11</td><td style="text-align:right"></td><td style="text-align:right"></td><td style="text-align:right"></td><td></td><td style="text-align:right"></td></tr>
+	// </tbody>
+	// </table>
+	// <ul>
+	// <li>resin: constant inside constant &#43; resin</li>
+	// <li>error: what constant &#43; resin leaves</li>
+	// </ul>
+	// </section>
+}

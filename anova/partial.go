@@ -3,6 +3,7 @@ package anova
 import (
 	"context"
 	"fmt"
+	"math"
 	"strings"
 
 	"subsume.example/glm"
@@ -130,14 +131,28 @@ func contrastOfCells(cells *Cells, columns [][]string, set, levels []int) lrt.Eq
 			e.Coef[k] += w
 		}
 	}
-	// Coefficients of terms that the contrast does not see cancel.
+	// Coefficients of terms that the contrast does not see cancel; what all others
+	// have in common is taken out.
 	var out lrt.Equation
+	common := 0.0
 	for k, c := range e.Coef {
 		if c != 0 {
 			out.Names, out.Coef = append(out.Names, e.Names[k]), append(out.Coef, c)
+			common = divisor(common, math.Abs(c))
 		}
 	}
+	for k := range out.Coef {
+		out.Coef[k] /= common
+	}
 	return out
+}
+
+// divisor returns the greatest common divisor of two whole numbers.
+func divisor(a, b float64) float64 {
+	for b != 0 {
+		a, b = b, math.Mod(a, b)
+	}
+	return a
 }
 
 // refused stands for a hypothesis that cannot be imposed; running its

@@ -162,6 +162,30 @@ func TestPublishedOneWay(t *testing.T) {
 	}
 }
 
+// TestCertifiedOneWay: NIST Statistical Reference Datasets, one-way: from decimal text
+// the table keeps at least 13 digits, also where 13 leading digits of all values agree.
+func TestCertifiedOneWay(t *testing.T) {
+	ctx := context.Background()
+	for _, id := range []string{"nist-sirstv", "nist-smls01", "nist-smls02", "nist-smls03", "nist-smls04", "nist-smls06", "nist-smls07", "nist-smls08", "nist-smls09"} {
+		s, d := load(t, id)
+		group := groupField("y", s.Order)
+		for _, dec := range []anova.Decomposition{anova.Sequential, anova.Partial} {
+			cs, err := anova.OneWay(ctx, d, "y", group, &anova.Options{Decomposition: dec})
+			tab := tabulate(t, cs, err)
+			r, _ := tab.Row(group)
+			e, _ := tab.Error()
+			for _, c := range []struct {
+				name string
+				got  float64
+			}{{"ss_between", r.SS()}, {"ss_within", e.SS}, {"F", r.Test().Statistic}, {"residual_sd", math.Sqrt(e.MeanSquare)}, {"r_squared", tab.RSquared()}} {
+				if digits := published.Digits(c.got, s.Exact(c.name, 0), 1); !(digits >= 13) {
+					t.Errorf("%s, %v: %s = %.17g, certified %.17g: %.1f digits", id, dec, c.name, c.got, s.Exact(c.name, 0), digits)
+				}
+			}
+		}
+	}
+}
+
 func TestPublishedFactorial(t *testing.T) {
 	ctx := context.Background()
 	for _, c := range []struct {

@@ -10,7 +10,7 @@ import (
 )
 
 // Report is a result ready to be written: facts about the whole, one line for each
-// thing reported, notes, and warnings. Text and Markdown are for people and
+// thing reported, notes, and warnings. Text, Markdown and HTML are for people and
 // round; CSV and JSON are for programs and keep every digit. The keys of facts
 // and columns are the names in CSV and JSON, and a promise; texts are not.
 type Report struct {
@@ -34,7 +34,7 @@ type Fact struct {
 // Column is a column of a report.
 type Column struct {
 	Key     string
-	Title   string // for people; "" keeps the column out of Text and Markdown
+	Title   string // for people; "" keeps the column out of what people read
 	Numeric bool   // holds numbers
 	// Even: people see all numbers of the column with the same decimals.
 	Even bool

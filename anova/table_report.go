@@ -4,7 +4,9 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"subsume.example/glm"
 	"subsume.example/lrt"
@@ -201,7 +203,9 @@ func (r Row) question(shared bool) string {
 		return s + r.note()
 	}
 	if eqs, ok := equations(restricted, full); ok {
-		s += "hypothesis " + firstEquation(eqs) + " inside " + clip(full)
+		s += "hypothesis " + firstEquation(eqs) + " inside " + briefly(full)
+	} else if added := r.added(); added != "" && briefly(full) != full {
+		s += clip(restricted) + " against the same with " + added
 	} else {
 		s += clip(restricted) + " inside " + clip(full)
 	}
@@ -218,6 +222,34 @@ func (r Row) question(shared bool) string {
 		s += "; " + n
 	}
 	return s
+}
+
+// briefly names a model of many terms by what it is.
+func briefly(full string) string {
+	if utf8.RuneCountInString(full) > 56 {
+		return "the model of all terms"
+	}
+	return full
+}
+
+// added returns the term that the full model of a row has beyond the restricted one;
+// "" where it is not just one term.
+func (r Row) added() string {
+	a, ok1 := r.comparison.Restricted.(*glm.Model)
+	b, ok2 := r.comparison.Full.(*glm.Model)
+	if !ok1 || !ok2 || len(b.Terms()) != len(a.Terms())+1 {
+		return ""
+	}
+	added := ""
+	for _, t := range b.Terms() {
+		if !slices.Contains(a.Terms(), t) {
+			if added != "" {
+				return ""
+			}
+			added = t
+		}
+	}
+	return added
 }
 
 // responseOf returns the name of the response of a linear row.

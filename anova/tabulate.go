@@ -40,7 +40,7 @@ func Tabulate(ctx context.Context, comparisons []lrt.Comparison, s *lrt.Settings
 		for i, k := range place {
 			cs[k] = joined[i]
 		}
-		t.whole = run(ctx, joined[len(place)], s)
+		t.whole = run(ctx, joined[len(place)], withoutReferences(s))
 	}
 	for _, c := range cs {
 		r := run(ctx, c, s)
@@ -60,6 +60,16 @@ func Tabulate(ctx context.Context, comparisons []lrt.Comparison, s *lrt.Settings
 		t.level = s.Level
 	}
 	return t, ctx.Err()
+}
+
+// withoutReferences spares the whole model what was asked for the rows: a simulation, say.
+func withoutReferences(s *lrt.Settings) *lrt.Settings {
+	if s == nil {
+		return nil
+	}
+	c := *s
+	c.References = nil
+	return &c
 }
 
 // run is Comparison.Run that keeps the fitted pair of a comparison that cannot be concluded.

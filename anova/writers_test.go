@@ -5,6 +5,8 @@ import (
 	"context"
 	"encoding/csv"
 	"encoding/json"
+	"encoding/xml"
+	"io"
 	"math"
 	"strconv"
 	"strings"
@@ -104,6 +106,51 @@ func TestWritersReadBack(t *testing.T) {
 	}
 }
 
+// TestHTML: what is written is well formed, holds every name as text, and nothing as markup.
+func TestHTML(t *testing.T) {
+	tab := awkward(t)
+	var b bytes.Buffer
+	if err := tab.Report().WriteHTML(&b); err != nil {
+		t.Fatal(err)
+	}
+	d := xml.NewDecoder(bytes.NewReader(b.Bytes()))
+	var names []string
+	var text strings.Builder
+	for {
+		tok, err := d.Token()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			t.Fatalf("%v in\n%s", err, b.String())
+		}
+		switch tok := tok.(type) {
+		case xml.StartElement:
+			names = append(names, tok.Name.Local)
+		case xml.CharData:
+			text.Write(tok)
+		}
+	}
+	for _, want := range []string{"y_<1>&", "a|b"} {
+		if !strings.Contains(text.String(), want) {
+			t.Errorf("%q is not in the text", want)
+		}
+	}
+	rows := 0
+	for _, n := range names {
+		switch n {
+		case "tr":
+			rows++
+		case "section", "h3", "dl", "dt", "dd", "table", "thead", "tbody", "th", "td", "ul", "li", "strong":
+		default:
+			t.Errorf("element %s", n)
+		}
+	}
+	if rows != len(tab.Rows())+3 {
+		t.Errorf("%d lines", rows)
+	}
+}
+
 // failing is a writer that breaks.
 type failing struct{ after int }
 
@@ -123,6 +170,7 @@ func TestWritersPassErrors(t *testing.T) {
 		"markdown": func(w *failing) error { return r.WriteMarkdown(w) },
 		"csv":      func(w *failing) error { return r.WriteCSV(w) },
 		"json":     func(w *failing) error { return r.WriteJSON(w) },
+		"html":     func(w *failing) error { return r.WriteHTML(w) },
 	} {
 		if err := write(&failing{after: 5}); err == nil {
 			t.Errorf("%s: an error of the writer is lost", name)
@@ -134,7 +182,7 @@ func TestWritersPassErrors(t *testing.T) {
 func TestEmptyReport(t *testing.T) {
 	var b bytes.Buffer
 	for _, r := range []anova.Report{{}, anova.Table{}.Report(), {Columns: []anova.Column{{Key: "k", Title: "t"}}}} {
-		for _, err := range []error{r.WriteText(&b), r.WriteMarkdown(&b), r.WriteCSV(&b), r.WriteJSON(&b)} {
+		for _, err := range []error{r.WriteText(&b), r.WriteMarkdown(&b), r.WriteCSV(&b), r.WriteJSON(&b), r.WriteHTML(&b)} {
 			if err != nil {
 				t.Error(err)
 			}
