@@ -467,7 +467,7 @@ func (p *problem) running(u0 []float64, s *summit, edges bool) bool {
 			toEdge = s.g[j]*s.u[j] > 0 && math.Abs(s.u[j])-math.Abs(u0[j]) > -math.Log(edgeRatio)
 			toInfinity = !edges && math.Abs(s.u[j]) > 80
 		default:
-			unit := math.Max(math.Abs(u0[j]), 1)
+			unit := math.Max(math.Max(math.Abs(u0[j]), 1), p.first[j])
 			toInfinity = math.Abs(d) > 1e9*unit && s.g[j]*d > 0
 		}
 		if toEdge && edges {

@@ -21,6 +21,7 @@ func (p *problem) survey(u []float64, f float64, curv []float64) {
 		}
 		curv[j*m+j] = p.secondDifference(u, f, j)
 		p.scale[j] = 1 / math.Sqrt(curv[j*m+j])
+		p.first[j] = p.scale[j]
 	}
 }
 
@@ -50,7 +51,12 @@ func (p *problem) secondDifference(u []float64, f float64, j int) float64 {
 		case d < 1e4*p.noise && d < 1e-3:
 			grow = true
 			h *= 16
-			if wide := math.Max(math.Abs(u[j]), 1); h > 1e6*wide {
+			wide := math.Max(math.Abs(u[j]), 1)
+			far := 1e6 * wide
+			if u[j] == 0 { // zero says nothing of the unit: stresses in pascal, counts of molecules
+				far = 1e30
+			}
+			if h > far {
 				return 1 / (wide * wide) // nothing depends on it
 			}
 			if p.co.links[j].kind != linkIdentity && h > 4 {

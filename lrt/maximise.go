@@ -561,7 +561,7 @@ func (p *problem) unit(q *peak, j int) float64 {
 	if p.co.links[j].kind != linkIdentity {
 		return 1
 	}
-	if a := math.Abs(q.u[j]); a > 0 {
+	if a := math.Max(math.Abs(q.u[j]), p.first[j]); a > 0 {
 		return a
 	}
 	return 1

@@ -15,6 +15,7 @@ type problem struct {
 	each, gradient, hessian bool // which of the model's functions are used
 
 	scale []float64 // about one standard error, by coordinate: the unit of difference steps
+	first []float64 // the unit that a climb's first look found, by coordinate
 	noise float64   // rounding of a log likelihood here
 	doubt []float64 // curvature that rounding alone could have made, by coordinate
 
@@ -48,7 +49,7 @@ func newProblem(ev *evaluator, co *coordinates) *problem {
 	}
 	m := co.m
 	p.scale, p.v, p.doubt = make([]float64, m), make([]float64, m), make([]float64, m)
-	p.per = make([]float64, m)
+	p.per, p.first = make([]float64, m), make([]float64, m)
 	if p.each {
 		p.base, p.work = make([]float64, c.n), make([]float64, c.n)
 	}

@@ -72,7 +72,7 @@ func drawn(ctx context.Context, s *Settings, n int, f func(ctx context.Context, 
 				i := next
 				next++
 				mu.Unlock()
-				v, err := f(ctx, i)
+				v, err := unpanicked(func() (float64, error) { return f(ctx, i) })
 				mu.Lock()
 				values[i], state[i] = v, 1
 				if err != nil {
@@ -87,7 +87,11 @@ func drawn(ctx context.Context, s *Settings, n int, f func(ctx context.Context, 
 					more := take(front, values[front])
 					front++
 					if progress != nil {
-						progress(front, n)
+						if _, e := unpanicked(func() (float64, error) { progress(front, n); return 0, nil }); e != nil {
+							failure, stop = fmt.Errorf("Progress: %w", e), true
+							cancel()
+							break
+						}
 					}
 					if !more {
 						stop = true
@@ -100,6 +104,17 @@ func drawn(ctx context.Context, s *Settings, n int, f func(ctx context.Context, 
 	}
 	wg.Wait()
 	return failure
+}
+
+// unpanicked calls f; a panic of a user's function becomes an error, for nobody can
+// recover those of another goroutine.
+func unpanicked(f func() (float64, error)) (v float64, err error) {
+	defer func() {
+		if r := recover(); r != nil {
+			err = fmt.Errorf("%w: %v", ErrPanic, r)
+		}
+	}()
+	return f()
 }
 
 // statistics draws n data sets at the restricted estimate and hands −2 log λ
