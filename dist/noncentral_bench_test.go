@@ -8,8 +8,9 @@ import (
 )
 
 // BenchmarkNoncentral times upper tails, densities and quantiles at the 5 % point, the centre
-// and the far tail.
+// and the far tail, with two functions of package math to re-base them.
 func BenchmarkNoncentral(b *testing.B) {
+	machine(b)
 	laws := []interface {
 		dist.Law
 		Prob(float64) float64

@@ -139,7 +139,7 @@ func TestFOtherPath(t *testing.T) {
 		g := newFArg(d1, d2, dd.From(x), 0)
 		c := &p.path
 		shift := (r.Float64() - 0.5) * 0.3 * min(1, (1+c.rho)/math.Sqrt(c.bigA+c.b*c.rho*(1+c.rho)))
-		q := newFPath(d1/2, d2/2, dd.From(lambda/2), &g, c.rho*(1+shift))
+		q := newFPath(d1/2, d2/2, dd.From(lambda/2), &g, c.rho*(1+shift), c.bent)
 		q.n *= 1.25
 		q.h /= 1.25
 		t1, u1, k1, s1 := p.All()
@@ -178,6 +178,34 @@ func TestFOtherPath(t *testing.T) {
 	mix.check(t, "mixture", 8e-15)
 	quick.check(t, "quick mixture", 4e-15)
 	rough.check(t, "quick kernel and slope", 3e-14)
+}
+
+// TestFBentAndCircle takes the other kind of path where both converge.
+func TestFBentAndCircle(t *testing.T) {
+	r := draw{rand.New(rand.NewPCG(7, 5))}
+	var tail, kernel worst
+	for range rounds(20000) {
+		d1, d2, lambda, x := r.point()
+		d2 = r.log(24, 60)
+		if r.IntN(2) == 0 {
+			d1, lambda = r.log(1, 1e3), r.log(1, 1e3)
+			x = (1 + lambda/d1) * math.Exp(r.NormFloat64())
+		}
+		p := AtF(d1, d2, lambda, x)
+		if !p.contour {
+			continue
+		}
+		g := newFArg(d1, d2, dd.From(x), 0)
+		q := newFPath(d1/2, d2/2, dd.From(lambda/2), &g, p.path.rho, !p.path.bent)
+		t1, u1, k1, _ := p.path.result()
+		t2, u2, k2, _ := q.result()
+		if u1 == u2 {
+			tail.add(distance(t1, t2), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+		}
+		kernel.add(distance(k1, k2), "d1=%v d2=%v λ=%v x=%v", d1, d2, lambda, x)
+	}
+	tail.check(t, "tail", 5e-15)
+	kernel.check(t, "kernel", 5e-15)
 }
 
 func TestTOtherSum(t *testing.T) {

@@ -118,7 +118,7 @@ func atF(d1, d2 float64, half, x dd.DD, ex int) (p F) {
 	rho, A := fSaddle(a, b, half.Hi, g.y().Hi)
 	if A+b*math.Log1p(rho) >= fFew {
 		p.contour = true
-		p.path = newFPath(a, b, half, &g, rho)
+		p.path = newFPath(a, b, half, &g, rho, b < bentBelow)
 		return p
 	}
 	p.right = g.beyond(rho)

@@ -39,8 +39,11 @@ type fPath struct {
 	eta   float64 // distance of the pole from the path, +Inf if no matter
 }
 
-func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64) fPath {
-	p := fPath{a: a, b: b, rho: rho, bent: b < 25}
+// bentBelow is the b below which the path is bent.
+const bentBelow = 25
+
+func newFPath(a, b float64, lam2 dd.DD, g *fArg, rho float64, bent bool) fPath {
+	p := fPath{a: a, b: b, rho: rho, bent: bent}
 	r1 := dd.Sum(1, rho)
 	u := g.y().Mul(r1).DivF(rho)
 	var e, l1, l2 dd.DD // U-1, log((1+ρ)/(1+c)), log(ρ/c)
@@ -165,14 +168,16 @@ func (p *fPath) circleSums() (s fSums) {
 func (p *fPath) bentSums() (s fSums) {
 	r := 1 + p.rho
 	small := p.small()
+	last := 0.0
 	for j := 0.5; j < maxNodes; j++ {
 		tau, w := sinhCosh(j * p.h)
 		q := tau * tau
 		zr, zi := -q/r, 2*tau/r
 		m := p.b*(q+math.Log1p(q)) - p.delta*zr - (p.a+p.b)*(math.Log1p(2*zr+zr*zr+zi*zi)/2-zr)
-		if !(m <= cut) {
-			break
+		if !(m <= cut && m >= last) {
+			break // where m turns the path crosses the valley that ends at u = 0
 		}
+		last = m
 		arg := math.Atan2(zi, 1+zr)
 		psi := 2*p.b*atanDefect(tau) + p.delta*zi + (p.a+p.b)*(arg-zi)
 		sp, cp := math.Sincos(psi)

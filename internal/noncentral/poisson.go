@@ -243,6 +243,14 @@ func (m *mixture) slope() special.Scaled {
 	return m.scaled(dropSum(&m.drops, m.half).MulF(0.5))
 }
 
+// large reports whether a tail is above 0.6, so that the other one is wanted.
+func large(t special.Scaled) bool {
+	if t.L.Hi == 0 {
+		return t.M.Hi > 0.6
+	}
+	return t.L.Hi+math.Log(t.M.Hi) > -0.51
+}
+
 // all returns the wanted tail or, if that is large, the other one, with kernel and slope.
 func (m *mixture) all(upper bool) (t special.Scaled, up bool, kernel, slope special.Scaled) {
 	for range 2 {
@@ -253,7 +261,7 @@ func (m *mixture) all(upper bool) (t special.Scaled, up bool, kernel, slope spec
 		} else {
 			t, kernel, slope = m.fullTail(upper), m.kernel(), m.slope()
 		}
-		if !(t.L.Hi > -8 && t.DD().Hi > 0.6) {
+		if !large(t) {
 			return t, upper, kernel, slope
 		}
 		upper = !upper

@@ -246,10 +246,10 @@ func TTail(nu, t, delta float64) (v special.Scaled, upper bool) {
 	case delta < tClose:
 		if t > delta {
 			v, upper = tSum(nu, t, delta), true
-			if v.L.Hi > -8 && v.Float64() > 0.6 {
+			if large(v) {
 				v, upper = tLower(nu, t, delta), false
 			}
-		} else if v = tLower(nu, t, delta); v.L.Hi > -8 && v.Float64() > 0.6 {
+		} else if v = tLower(nu, t, delta); large(v) {
 			v, upper = tSum(nu, t, delta), true
 		}
 	default:
