@@ -8,9 +8,8 @@ import (
 )
 
 // BenchmarkNoncentral times upper tails, densities and quantiles at the 5 % point, the centre
-// and the far tail, with two functions of package math to re-base them.
+// and the far tail.
 func BenchmarkNoncentral(b *testing.B) {
-	machine(b)
 	laws := []interface {
 		dist.Law
 		Prob(float64) float64
@@ -32,7 +31,7 @@ func BenchmarkNoncentral(b *testing.B) {
 		}{{"5%", 0.05}, {"centre", 0.5}, {"far", 1e-100}} {
 			x := l.UpperQuantile(p.q)
 			b.Run(fmt.Sprintf("%v/tail/%s", l, p.name), func(b *testing.B) {
-				b.ReportAllocs()
+				besideMachine(b)
 				for b.Loop() {
 					sink = l.Survival(x)
 				}
@@ -40,20 +39,20 @@ func BenchmarkNoncentral(b *testing.B) {
 		}
 		x := l.UpperQuantile(0.05)
 		b.Run(fmt.Sprintf("%v/density/5%%", l), func(b *testing.B) {
-			b.ReportAllocs()
+			besideMachine(b)
 			for b.Loop() {
 				sink = l.Prob(x)
 			}
 		})
 		b.Run(fmt.Sprintf("%v/quantile/5%%", l), func(b *testing.B) {
-			b.ReportAllocs()
+			besideMachine(b)
 			for b.Loop() {
 				sink = l.UpperQuantile(0.05)
 			}
 		})
 	}
 	b.Run("NoncentralityF(3, 20)", func(b *testing.B) {
-		b.ReportAllocs()
+		besideMachine(b)
 		for b.Loop() {
 			sink, _ = dist.NoncentralityF(3, 20, 3.1, 0.8)
 		}
