@@ -99,7 +99,7 @@ func (s *study) writePlan(p *page) {
 	p.gap()
 	t := p.table("lr")
 	t.row("level of the test", percent(q.alpha))
-	t.row("noncentrality λ of that pattern in this design", fig(q.row.Plan.Noncentrality, 4))
+	t.row("noncentrality of that pattern in this design", fig(q.row.Plan.Noncentrality, 4))
 	t.row("power of the exact F test in this design", percent(q.row.Power))
 	t.row(fmt.Sprintf("difference found with power %s in this design", percent(q.wanted)), fig(q.detectable, 4))
 	if q.each > 0 {
