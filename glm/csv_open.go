@@ -104,7 +104,7 @@ func (s *csvScan) setup(names []string, place map[string]int) error {
 	}
 	check := func(name, option string) error {
 		if _, ok := place[name]; !ok {
-			return s.fail(-1, name, "", fmt.Errorf("%w: named by %s, but there are %s", ErrUnknownColumn, option, quoteNames(names)))
+			return s.fail(-1, name, "", fmt.Errorf("%w; there are %s (option %s)", ErrUnknownColumn, quoteNames(names), option))
 		}
 		return nil
 	}

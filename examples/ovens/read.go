@@ -81,7 +81,8 @@ func (s *study) read(ctx context.Context) error {
 
 // hint adds what a user probably forgot.
 func (s *study) hint(err error) error {
-	if errors.Is(err, glm.ErrUnknownColumn) && s.delimiter == "" && strings.Contains(err.Error(), ";") {
+	_, names, _ := strings.Cut(err.Error(), "; there are ")
+	if errors.Is(err, glm.ErrUnknownColumn) && s.delimiter == "" && strings.Contains(names, ";") {
 		return fmt.Errorf("%w (do the fields stand between semicolons? -delimiter ';', and -decimal-comma where numbers are written 12,5)", err)
 	}
 	return err
