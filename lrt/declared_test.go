@@ -901,3 +901,42 @@ func TestUserCodeThatWritesOrForgets(t *testing.T) {
 		t.Errorf("a forgotten term: %v", err)
 	}
 }
+
+// The degrees of freedom of a t law fitted to data with lighter tails run to
+// infinity; the fit says so, and finds the normal maximum.
+func TestParameterThatIsOnlyLarge(t *testing.T) {
+	y := make([]float64, 60)
+	for i := range y {
+		y[i] = 3 * (float64(i)/59 - 0.5) // flat: no tails at all
+	}
+	m := Model[[]float64]{
+		Params: []Param{Real("centre"), Positive("scale"), Positive("nu")},
+		LogLikelihood: func(y, th []float64) float64 {
+			nu := th[2]
+			// Γ((ν+1)/2)/(Γ(ν/2)√(ν/2)), by Stirling where the two would cancel.
+			c := -0.25 / nu
+			if nu < 1e4 {
+				a, _ := math.Lgamma((nu + 1) / 2)
+				b, _ := math.Lgamma(nu / 2)
+				c = a - b - 0.5*math.Log(nu/2)
+			}
+			l := 0.0
+			for _, v := range y {
+				z := (v - th[0]) / th[1]
+				l += c - 0.5*math.Log(2*math.Pi) - math.Log(th[1]) - (nu+1)/2*math.Log1p(z*z/nu)
+			}
+			return l
+		},
+		Start: func([]float64) []float64 { return []float64{0.2, 1, 5} },
+	}
+	fit, err := mustBind(t, m, y, 60).Maximize(bg)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := normalBest(grouped{y, make([]int, 60), 1}); math.Abs(fit.LogLikelihood-want) > 1e-4 {
+		t.Errorf("log likelihood %.8g, want the normal %.8g", fit.LogLikelihood, want)
+	}
+	if text := warningText(fit.Warnings, "maximum-at-infinity"); !strings.Contains(text, "nu") {
+		t.Errorf("estimate %v, warnings %v", fit.Estimate, fit.Warnings)
+	}
+}

@@ -72,6 +72,26 @@
 // values, *RestrictionError. A function of a model that panics becomes an error
 // wrapping ErrPanic. What is usable but doubtful is a Warning with a stable code.
 //
+// The codes of this package:
+//
+//	boundary                 a maximum has a parameter at the end of its range or at a bound
+//	not-identifiable         the data do not determine some parameters, named
+//	irregular                −2 log λ has no known law here; Pair.Irregular says why
+//	maximum-at-infinity      the supremum is approached only as a parameter runs away
+//	several-maxima           starts led to different maxima; the largest is kept
+//	loose-maximum            the maximum is less certain than usual, by the figure given
+//	flat-top                 the curvature at the estimate is not that of a maximum
+//	gradient-disagrees       Gradient, Hessian or Each contradict the log likelihood
+//	hessian-disagrees        and are not used
+//	each-disagrees
+//	closed-form-not-maximum  a small step from the closed form gains: fitted numerically
+//	start-outside-range      Start was moved inside
+//	redundant-restriction    a restriction says nothing that others do not
+//	nesting-not-checked      nobody can prove that one space is inside the other
+//	optional-interface-lost  a type seems to have methods by intent that it does not have
+//	small-sample             χ² is all there is, and the sample is small
+//	nil-residual             a perfect fit: p = 0 is no computed probability
+//
 // # Implementing a Space
 //
 // A Space needs two methods, Observations and Maximize; by the optional

@@ -269,6 +269,26 @@ func (p *problem) idleTowardsEnd(sm *summit) []int {
 	return js
 }
 
+// idleTowardsInfinity names the parameters whose growth beyond the estimate, by
+// a factor of a hundred, makes no difference any more.
+func (p *problem) idleTowardsInfinity(q *peak) []string {
+	var names []string
+	m := p.co.m
+	for j, l := range p.co.links {
+		if l.kind != linkAbove && l.kind != linkBelow || q.info == nil || math.Abs(q.info[j*m+j]) > 1e-3 {
+			continue
+		}
+		v := append([]float64(nil), q.u...)
+		v[j] += 4.6
+		up := p.value(v)
+		v[j] -= 9.2
+		if math.Abs(up-q.f) < 1e-6 && math.Abs(p.value(v)-q.f) > math.Abs(up-q.f) {
+			names = appendNew(names, p.co.names(j)...)
+		}
+	}
+	return names
+}
+
 // hold maximises with parameters held at the ends they run into.
 func (s *search) hold(p *problem, eq echelon, sm *summit, more []held, hs []held, depth int) *peak {
 	all := append([]held(nil), hs...)
@@ -381,6 +401,9 @@ func (s *search) check(q *peak) error {
 		down, flats, ridges := p.spectrum(q)
 		for _, v := range ridges {
 			q.warn = append(q.warn, Warning{"maximum-at-infinity", "the log likelihood does not fall as " + strings.Join(p.moved(v), ", ") + " grows beyond the estimate: its supremum is at infinity or the data end there"})
+		}
+		if names := p.idleTowardsInfinity(q); len(names) > 0 {
+			q.warn = append(q.warn, Warning{"maximum-at-infinity", "the log likelihood does not change as " + strings.Join(names, ", ") + " grows beyond the estimate: the data say only that it is large"})
 		}
 		q.flat, q.loss = nil, len(flats)
 		for _, v := range flats {

@@ -13,7 +13,8 @@ import (
 // questions answerable. All of them must be safe for concurrent use, must not
 // keep theta, and should return rather than panic (a panic becomes an error
 // that holds the parameter value). theta has one value for each of Params, in
-// their order, always inside their ranges.
+// their order, always inside their ranges. Between evaluations a fit looks at
+// its context and its Budget; a function that never returns cannot be stopped.
 type Model[D any] struct {
 	Name   string
 	Params []Param
