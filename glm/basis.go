@@ -158,7 +158,7 @@ func (m *Model) weights(names []string, coef []float64) ([]weight, error) {
 	for i, n := range names {
 		t, c, ok := m.coefficient(n)
 		if !ok {
-			return nil, &CoefficientError{Name: n, Err: ErrUnknownCoefficient}
+			return nil, m.unknown(n)
 		}
 		ws[i] = weight{t, c, dd.From(coef[i])}
 	}

@@ -57,7 +57,7 @@ func ExampleFit_Coefficient() {
 	fmt.Println(err)
 	// Output:
 	// 0.0933 kg per per cent, <nil>
-	// glm: coefficient "warmth": no such coefficient
+	// glm: coefficient "warmth": no such coefficient; there are "constant", "wetness", "substrate=straw", "substrate=bran", "substrate=husk"
 }
 
 func ExampleFit_Covariance() {

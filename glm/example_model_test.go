@@ -131,7 +131,7 @@ func ExampleModel_Restrict() {
 	// slope 0.1: F = 0.287, p = 0.607
 	// straw as husk: F = 0.068, p = 0.801
 	// yield by constant + wetness + substrate, where [substrate=straw] − [substrate=husk] = 0
-	// glm: coefficient "warmth": no such coefficient
+	// glm: coefficient "warmth": no such coefficient; there are "constant", "wetness", "substrate=straw", "substrate=bran", "substrate=husk"
 }
 
 // Several questions on one factorization: the rows are read once.

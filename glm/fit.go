@@ -392,7 +392,7 @@ func (f *Fit) weights(ws []Weight) ([]weight, error) {
 	for i, w := range ws {
 		t, c, ok := f.Model.coefficient(w.Name)
 		if !ok {
-			return nil, &CoefficientError{Name: w.Name, Err: ErrUnknownCoefficient}
+			return nil, f.Model.unknown(w.Name)
 		}
 		if math.IsNaN(w.Coef) || math.IsInf(w.Coef, 0) {
 			return nil, &CoefficientError{Name: w.Name, Err: fmt.Errorf("%w: weight %g", lrt.ErrInvalid, w.Coef)}
@@ -422,5 +422,5 @@ func (f *Fit) Coefficient(name string) (Coefficient, error) {
 			return c, nil
 		}
 	}
-	return Coefficient{}, &CoefficientError{Name: name, Err: ErrUnknownCoefficient}
+	return Coefficient{}, f.Model.unknown(name)
 }

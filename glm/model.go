@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 	"strings"
 
 	"subsume.example/lrt"
@@ -388,7 +389,7 @@ func (m *Model) checkEquation(e lrt.Equation) error {
 	}
 	for i, n := range e.Names {
 		if _, _, ok := m.coefficient(n); !ok {
-			return &CoefficientError{Name: n, Err: ErrUnknownCoefficient}
+			return m.unknown(n)
 		}
 		if math.IsNaN(e.Coef[i]) || math.IsInf(e.Coef[i], 0) {
 			return fmt.Errorf("glm: %w: equation %s", lrt.ErrInvalid, equationText(e))
@@ -407,6 +408,15 @@ func (m *Model) coefficient(name string) (term, column int, ok bool) {
 		}
 	}
 	return 0, 0, false
+}
+
+// unknown is the error of a name that no coefficient has; it lists those there are.
+func (m *Model) unknown(name string) error {
+	names := m.Coefficients()
+	for i := range min(len(names), 10) { // list names no more
+		names[i] = strconv.Quote(clip(names[i]))
+	}
+	return &CoefficientError{Name: name, Err: fmt.Errorf("%w; there are %s", ErrUnknownCoefficient, list(names))}
 }
 
 // CoefficientError says which coefficient is at fault, and why.
