@@ -49,12 +49,16 @@ func (t *levelTable) quick(b []byte, p int, ends uint64) (at int32, next int) {
 	if n == 0 || n == 8 {
 		return 0, 0
 	}
+	next = p + n
+	if b[next] == '\n' && b[next-1] == '\r' {
+		n--
+	}
 	w = w&(1<<uint(8*n)-1) | uint64(n)<<56
 	s := &t.short[place(w)]
 	if s.word != w {
 		return 0, 0
 	}
-	return s.at, p + n
+	return s.at, next
 }
 
 // zeroByte returns the number of the first byte of w that is zero, 8 for none.
