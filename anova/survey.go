@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"iter"
+	"slices"
 
 	"subsume.example/glm"
 	"subsume.example/lrt"
@@ -49,7 +50,7 @@ func takeSurvey(ctx context.Context, m *glm.Model) (*survey, error) {
 		return nil, err
 	}
 	s := &survey{model: m, cells: cells, covariates: m.Covariates(), level: make([][]cellValue, len(cells.Factors))}
-	if o := m.Options().Offset; o != "" && !contains1(s.covariates, o) {
+	if o := m.Options().Offset; o != "" && !slices.Contains(s.covariates, o) {
 		s.covariates = append(s.covariates, o)
 	}
 	at := make([]int, len(cells.Factors))
@@ -98,15 +99,6 @@ func takeSurvey(ctx context.Context, m *glm.Model) (*survey, error) {
 		s.mean = append(s.mean, shift[i]+sum[i]/s.n)
 	}
 	return s, nil
-}
-
-func contains1(list []string, s string) bool {
-	for _, x := range list {
-		if x == s {
-			return true
-		}
-	}
-	return false
 }
 
 // pass counts the observations by cell and calls visit for every row with its
