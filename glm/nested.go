@@ -3,6 +3,7 @@ package glm
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"subsume.example/internal/dd"
 	"subsume.example/internal/linalg"
@@ -21,6 +22,9 @@ func (j *joint) nested(s, b *view) (string, error) {
 			return "", fmt.Errorf("%w: term %q is not in the restricted full space", lrt.ErrNotNested, s.m.cols[i].name)
 		}
 		how = "every column of the restricted space is a combination of columns of the full space"
+		if j.coarser(g, b.groups) {
+			continue
+		}
 		f := j.factorOf(b)
 		for c, name := range s.m.cols[i].Names {
 			if r := f.Outside(g, c); r > 10*j.tol {
@@ -32,6 +36,29 @@ func (j *joint) nested(s, b *view) (string, error) {
 		return "", err
 	}
 	return how, j.nestedOffsets(s, b)
+}
+
+// coarser reports whether the cells of a group are unions of the cells of one of
+// others: the levels of a factor, of those of its products; the constant, of any.
+func (j *joint) coarser(g int, others []int) bool {
+	b := j.cols[g]
+	if b.Key != "constant" && !b.partition {
+		return false
+	}
+	for _, h := range others {
+		c := j.cols[h]
+		if !c.partition {
+			continue
+		}
+		all := true
+		for _, f := range b.factors {
+			all = all && slices.ContainsFunc(c.factors, func(l levelSet) bool { return l.field == f.field })
+		}
+		if all {
+			return true
+		}
+	}
+	return false
 }
 
 // impliedEquations checks that what restricts b also holds on s.
