@@ -51,7 +51,9 @@ func (t *levelTable) quick(b []byte, p int, ends uint64) (at int32, next int) {
 	}
 	next = p + n
 	if b[next] == '\n' && b[next-1] == '\r' {
-		n--
+		if n--; n == 0 {
+			return 0, 0 // nothing: it may stand for "missing"
+		}
 	}
 	w = w&(1<<uint(8*n)-1) | uint64(n)<<56
 	s := &t.short[place(w)]

@@ -67,6 +67,8 @@ func TestReadCSV(t *testing.T) {
 		{"CR LF and mark", "\xEF\xBB\xBFy,g\r\n1.5,a\r\n2,b\r\n", nil, columns{"y": {"1.5", "2"}, "g": {"'a'", "'b'"}}},
 		{"CR LF, numbers last", "g,y\r\na,1.5\r\nb,2\r\n", nil, columns{"y": {"1.5", "2"}, "g": {"'a'", "'b'"}}},
 		{"carriage return at the end", "g,y\r\na,1.5\r\nb,2\r", nil, columns{"y": {"1.5", "2"}, "g": {"'a'", "'b'"}}},
+		{"CR LF after nothing", "y,g\r\n1,a\r\n2,\r\n3,a\r\n4,b\r\n5,\r\n6,b\r\n", nil,
+			columns{"y": {"1", "2", "3", "4", "5", "6"}, "g": {"'a'", "missing", "'a'", "'b'", "missing", "'b'"}}},
 		{"quotes", "\"y\",\"a \"\"b\"\", c\"\n\"1.5\",\" x\"\n2,\"line 1\nline 2\"\n", nil,
 			columns{"y": {"1.5", "2"}, "a \"b\", c": {"' x'", "'line 1\nline 2'"}}},
 		{"quoted CR LF", "y,g\r\n1,\"p\r\nq\"\r\n", nil, columns{"y": {"1"}, "g": {"'p\r\nq'"}}},
