@@ -466,6 +466,10 @@ func TestRefusals(t *testing.T) {
 	if _, err := full.Restrict(lrt.Fix("zz", 1)); !errors.Is(err, glm.ErrUnknownCoefficient) {
 		t.Errorf("unknown coefficient: %v", err)
 	}
+	twice := model(t, d, nil, one, glm.Powers{Field: "x", Degree: 1}, glm.Powers{Field: "x", Degree: 2})
+	if _, err := twice.Restrict(lrt.Fix("x", 0)); !errors.Is(err, glm.ErrAmbiguous) {
+		t.Errorf("a name of two columns: %v", err)
+	}
 	if _, err := full.Restrict(lrt.AtLeast("x", 0)); !errors.Is(err, lrt.ErrNotRestrictable) {
 		t.Errorf("bound: %v", err)
 	}

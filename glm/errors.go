@@ -12,6 +12,8 @@ var (
 	ErrWeight = errors.New("weight not usable")
 	// ErrNotEstimable: a linear function of the coefficients is not a function of the fitted values.
 	ErrNotEstimable = errors.New("not estimable from these data")
+	// ErrAmbiguous: several columns have the name.
+	ErrAmbiguous = errors.New("several columns of the model have this name")
 	// ErrUnknownCoefficient: the model has no coefficient of the name.
 	ErrUnknownCoefficient = errors.New("no such coefficient")
 	// ErrContradiction: restrictions cannot hold together.

@@ -390,6 +390,9 @@ func (f *Fit) Combination(ws ...Weight) (Estimate, error) {
 func (f *Fit) weights(ws []Weight) ([]weight, error) {
 	list := make([]weight, len(ws))
 	for i, w := range ws {
+		if f.Model.ambiguous(w.Name) {
+			return nil, &CoefficientError{Name: w.Name, Err: ErrAmbiguous}
+		}
 		t, c, ok := f.Model.coefficient(w.Name)
 		if !ok {
 			return nil, f.Model.unknown(w.Name)

@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"sync"
 
 	"subsume.example/lrt"
 )
@@ -71,6 +72,7 @@ type Model struct {
 	opt      Options
 	obs      lrt.Observations
 	at       places
+	index    *nameIndex
 	eqs      []lrt.Equation // restrictions on the coefficients
 	joint    *joint         // where it is a view on a joint factorization
 }
@@ -146,7 +148,7 @@ func (m *Model) checkOptions() error {
 // not bound again.
 func (m *Model) With(ctx context.Context, terms ...Term) (*Model, error) {
 	w := *m
-	w.joint, w.eqs = nil, nil
+	w.joint, w.eqs, w.index = nil, nil, new(nameIndex)
 	w.cols = append([]*bound(nil), m.cols...)
 	for i, t := range terms {
 		if t == nil {
@@ -217,7 +219,7 @@ func (b *bound) blame(err error) error {
 // have, each once: where two terms share a name, Normal makes the smaller model.
 func (m *Model) Without(names ...string) (*Model, error) {
 	w := *m
-	w.joint, w.eqs = nil, nil
+	w.joint, w.eqs, w.index = nil, nil, new(nameIndex)
 	w.cols = nil
 	gone := make(map[string]bool)
 	for _, b := range m.cols {
@@ -388,6 +390,9 @@ func (m *Model) checkEquation(e lrt.Equation) error {
 		return fmt.Errorf("glm: %w: equation %s", lrt.ErrInvalid, equationText(e))
 	}
 	for i, n := range e.Names {
+		if m.ambiguous(n) {
+			return &CoefficientError{Name: n, Err: ErrAmbiguous}
+		}
 		if _, _, ok := m.coefficient(n); !ok {
 			return m.unknown(n)
 		}
@@ -398,17 +403,40 @@ func (m *Model) checkEquation(e lrt.Equation) error {
 	return nil
 }
 
-// coefficient finds a column by name: the term's number and the column's.
-func (m *Model) coefficient(name string) (term, column int, ok bool) {
-	for t, b := range m.cols {
-		for c, n := range b.Names {
-			if n == name {
-				return t, c, true
+// nameIndex finds columns by name; it is made when first asked for.
+type nameIndex struct {
+	once  sync.Once
+	place map[string]columnPlace
+}
+
+// columnPlace is where a name stands, and in how many columns.
+type columnPlace struct{ term, column, count int }
+
+func (m *Model) lookup(name string) columnPlace {
+	m.index.once.Do(func() {
+		m.index.place = make(map[string]columnPlace)
+		for t, b := range m.cols {
+			for c, n := range b.Names {
+				p := m.index.place[n]
+				if p.count == 0 {
+					p.term, p.column = t, c
+				}
+				p.count++
+				m.index.place[n] = p
 			}
 		}
-	}
-	return 0, 0, false
+	})
+	return m.index.place[name]
 }
+
+// coefficient finds a column by name: the term's number and the column's.
+func (m *Model) coefficient(name string) (term, column int, ok bool) {
+	p := m.lookup(name)
+	return p.term, p.column, p.count > 0
+}
+
+// ambiguous reports whether several columns have the name.
+func (m *Model) ambiguous(name string) bool { return m.lookup(name).count > 1 }
 
 // unknown is the error of a name that no coefficient has; it lists those there are.
 func (m *Model) unknown(name string) error {
