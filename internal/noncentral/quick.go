@@ -17,7 +17,8 @@ const (
 	quickLambda = 600
 	quickSmall  = 1e-150 // times e^{-λ/2} still a normal number
 	quickTerms  = 160
-	plain       = 0x1p-13 // terms below this part of the sum need no low parts
+	plain       = 0x1p-10 // terms below this part of the sum need no low parts
+	quickTiny   = 0x1p-58 // terms below this part of the sum, falling by half, end it
 )
 
 // reciprocal holds 1/j as a pair.
@@ -197,7 +198,7 @@ func (m *mixture) quickUpper(t dd.DD, r *quickSums) bool {
 				g = float64(wh * th)
 				slope += g
 				kernel += float64(g * (aj + f))
-				if p < tiny*sh {
+				if p < quickTiny*sh {
 					r.tail = dd.Sum(sh, sl)
 					r.kernel, r.slope = kernel, slope
 					return true
@@ -286,7 +287,7 @@ func (m *mixture) quickLower(t dd.DD, r *quickSums) bool {
 				g = float64(wh * th)
 				slope += g
 				kernel += float64(g * (aj + f))
-				if p < tiny*sh {
+				if p < quickTiny*sh {
 					r.tail = dd.Sum(sh, sl)
 					r.kernel, r.slope = kernel, slope
 					return true
