@@ -66,8 +66,12 @@ func (m *mixture) lowerSum() dd.DD {
 		}
 		sum = sum.Add(t)
 		r := d.ratio(f).MulF(z)
-		// the quotient of all later terms is at most q
-		q := r.Hi / z * (1 + w.Hi/W.Hi*half.Hi/(f+1))
+		// The quotient of all later terms is at most q; that of T tends to y from either side.
+		rt := r.Hi / z
+		if m.beta {
+			rt = max(rt, m.y.Hi)
+		}
+		q := rt * (1 + w.Hi/W.Hi*half.Hi/(f+1))
 		if t.Hi < tiny*sum.Hi*(1-q) {
 			break
 		}

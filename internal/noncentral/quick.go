@@ -211,6 +211,7 @@ func (m *mixture) quickUpper(t dd.DD, r *quickSums) bool {
 				}
 				th *= c
 			}
+			return false
 		}
 	}
 	return false
@@ -276,7 +277,13 @@ func (m *mixture) quickLower(t dd.DD, r *quickSums) bool {
 		p = float64(th * c)
 		tl = math.FMA(th, c, -p) + (float64(th*cl) + float64(tl*c))
 		th = p
-		// the quotient of all later terms is at most q
+		if slow {
+			continue // to the rest: the weights die out before T does
+		}
+		// The quotient of all later terms is at most q; that of T tends to y from either side.
+		if m.beta {
+			c = max(c, yh)
+		}
 		q := c * (1 + wh/Wh)
 		if q < 0.7 && last < plain*sh {
 			// the rest in plain arithmetic
@@ -300,6 +307,7 @@ func (m *mixture) quickLower(t dd.DD, r *quickSums) bool {
 				}
 				th *= c
 			}
+			return false
 		}
 	}
 	return false
