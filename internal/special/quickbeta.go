@@ -14,7 +14,8 @@ func lgammaBig(a dd.DD) (hi, lo float64) {
 	}
 	var l acc
 	g := dd.LogQuick(a)
-	l.addProd(a.Hi+0.5, g.Hi, g.Lo)
+	l.addProd(a.Hi, g.Hi, g.Lo)
+	l.add(0.5*g.Hi, 0.5*g.Lo) // a + 1/2 rounds from 31.5 up
 	l.addProd(a.Lo, g.Hi, 0)
 	l.add(-a.Hi, -a.Lo)
 	l.add(halfLog2Pi.Hi, halfLog2Pi.Lo)
