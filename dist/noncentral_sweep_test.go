@@ -196,3 +196,34 @@ func FuzzNoncentral(f *testing.F) {
 }
 
 func inDomain(df float64) bool { return df >= 1e-3 && df <= 1e12 || math.IsInf(df, 1) }
+
+// TestNoncentralDensity compares the density with differences of the smaller tail at random points
+// of the whole domain, where the step can be both small for the law and large for the floats.
+func TestNoncentralDensity(t *testing.T) {
+	n := 6000
+	if os.Getenv("SUBSUME_LONG") == "1" {
+		n = 300000
+	}
+	r := rand.New(rand.NewPCG(8, 12))
+	for range n {
+		law, x := noncentralPoint(r)
+		lo, up, d := law.CDF(x), law.Survival(x), law.Prob(x)
+		m := min(lo, up)
+		if !(m > 1e-290 && d > 1e-290 && d < 1e290) || math.Abs(x) < 1e-280 || math.Abs(x) > 1e280 {
+			continue
+		}
+		k := math.Abs(x) * d / m
+		h := 1e-5 / max(k, 1)
+		if h < 1e-10 {
+			continue
+		}
+		tail := law.CDF
+		if up < lo {
+			tail = law.Survival
+		}
+		got := math.Abs(tail(x*(1+h))-tail(x*(1-h))) / m / (2 * h)
+		if !(math.Abs(got-k) <= 1e-5*k+3e-15/h) {
+			t.Errorf("%#v at x = %v: x density/tail is %v, by differences %v", law, x, k, got)
+		}
+	}
+}

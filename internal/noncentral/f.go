@@ -84,7 +84,8 @@ func fMixture(a, b float64, half dd.DD, g *fArg) mixture {
 		m.c, _ = special.BetaTailTiny(da, db, g.logC())
 		m.t0, m.end = m.c, -1
 	case g.shift > 0:
-		m.c, m.t0 = special.BetaTailTiny(db, da, g.logC().Neg())
+		m.logY1 = g.logC().Neg()
+		m.c, m.t0 = special.BetaTailTiny(db, da, m.logY1)
 		m.t0.M = m.t0.M.Div(da)
 		m.end = 1
 	default:

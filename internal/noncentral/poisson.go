@@ -164,6 +164,8 @@ type mixture struct {
 	t0   special.Scaled // T_0, see first
 	end  int            // -1, +1: y is at 0 or 1 to all digits, the central tail that is not 1 is c
 	c    special.Scaled
+	// log(1-y), where end is 1
+	logY1 dd.DD
 }
 
 // upperRatio returns Q_0/T_0.
@@ -186,8 +188,9 @@ func (m *mixture) upperRatio() dd.DD {
 
 // lowerRatio returns P_j/T_0 (for F).
 func (m *mixture) lowerRatio(j int) dd.DD {
-	if m.end > 0 { // 1 - Q_j, with Q_j = Q_0 + T_0 + ... of the size of Q_0
-		return complementOver(m.c, m.t0)
+	if m.end > 0 {
+		q, _ := special.BetaTailTiny(dd.From(m.b), dd.Sum(m.a, float64(j)), m.logY1)
+		return complementOver(q, m.t0)
 	}
 	c, upper := special.BetaTail(dd.Sum(m.a, float64(j)), dd.From(m.b), m.y, m.y1)
 	if upper {
