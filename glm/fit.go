@@ -65,6 +65,7 @@ type Fit struct {
 	f       *linalg.Factor
 	order   *termOrder // where the factorization did not follow the terms
 	reading *reading
+	whole   linalg.Vec // all coefficients, where they are many; used while the fit is made
 }
 
 // Fit estimates the model. The confidence level of the intervals is that of s.
@@ -343,12 +344,42 @@ func (f *Fit) aside(g, column int) bool {
 	return f.order != nil && slices.Contains(f.order.last, at)
 }
 
+// single returns the coefficient of one level without a vector of its own, for there
+// may be a hundred thousand.
+func (f *Fit) single(term, g, column int) float64 {
+	if f.whole.Len() == 0 {
+		f.whole = f.j.forward(f.Model, f.v.beta)
+	}
+	at, carrier := f.j.gram.Offset(g)+column, f.Model.carrier()
+	x := f.whole.At(at)
+	var c pulled
+	if term == carrier {
+		c.carried = dd.From(1)
+	}
+	if f.order != nil {
+		for i, v := range f.order.null {
+			if a := v.At(at); a.Hi != 0 {
+				last := f.order.last[i]
+				x = x.Sub(a.Mul(f.whole.At(last)))
+				if b, _ := f.columnAt(last); f.Model.find(b) == carrier {
+					c.carried = c.carried.Sub(a)
+				}
+			}
+		}
+	}
+	return f.j.asked(x, c)
+}
+
 func (f *Fit) coefficient(term, column int) Coefficient {
 	b := f.Model.cols[term]
 	c := Coefficient{Term: b.name, Name: b.Names[column], SE: math.NaN(), T: math.NaN(), P: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
 	g := f.j.group(f.j.cols[term])
 	if f.aside(g, column) {
 		c.Aliased = true
+		return c
+	}
+	if !b.dense() && f.Model.columns() > maxReported {
+		c.Estimate = f.single(term, g, column)
 		return c
 	}
 	ws := []weight{{term, column, dd.From(1)}}
