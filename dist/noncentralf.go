@@ -41,10 +41,14 @@ func (f NoncentralF) valid() bool {
 	return finitePositive(f.D1) && f.D2 > 0 && finiteNonnegative(f.Lambda)
 }
 
+// unlimited reports denominator degrees of freedom at which the law is its limit to
+// the last bit, as that of F is.
+func (f NoncentralF) unlimited() bool { return f.D2 > 1e100 }
+
 func (f NoncentralF) central() F { return F{f.D1, f.D2} }
 
 func (f NoncentralF) tail(x float64) centralTail {
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		p, upper, ok := f.limit(x)
 		if !ok {
 			return centralTail{upper: upper}
@@ -59,7 +63,7 @@ func (f NoncentralF) tail(x float64) centralTail {
 
 // tailKernel returns the tail and the density of log X.
 func (f NoncentralF) tailKernel(x float64) (centralTail, special.Scaled) {
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		p, upper, ok := f.limit(x)
 		if !ok {
 			return centralTail{upper: upper}, special.Scaled{}
@@ -74,7 +78,7 @@ func (f NoncentralF) tailKernel(x float64) (centralTail, special.Scaled) {
 
 // kernel returns the density of log X.
 func (f NoncentralF) kernel(x float64) special.Scaled {
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		p, _, ok := f.limit(x)
 		if !ok {
 			return special.Scaled{}
@@ -177,7 +181,7 @@ func (f NoncentralF) LogProb(x float64) float64 {
 		}
 	}
 	k := perX(f.kernel(x), x)
-	if l := k.Log(); l < -0.05 || l > 0.05 || math.IsInf(f.D2, 1) {
+	if l := k.Log(); l < -0.05 || l > 0.05 || f.unlimited() {
 		return l
 	}
 	// near 1 an error of some 1e-16 would be large beside the logarithm
@@ -231,7 +235,7 @@ func (f NoncentralF) Mean() float64 {
 		return math.Inf(1)
 	}
 	m := 1 + f.Lambda/f.D1
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		return m
 	}
 	return m * (f.D2 / (f.D2 - 2))
@@ -248,7 +252,7 @@ func (f NoncentralF) Variance() float64 {
 	}
 	l := f.Lambda / f.D1
 	v := (1 + 2*l) / f.D1
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		return 2 * v
 	}
 	m := f.D2 / (f.D2 - 2)
@@ -270,7 +274,7 @@ func (f NoncentralF) Rand(src rand.Source) float64 {
 	} else {
 		num = logGammaVariate(src, f.D1/2+poissonVariate(src, f.Lambda/2)) - math.Log(f.D1/2)
 	}
-	if math.IsInf(f.D2, 1) {
+	if f.unlimited() {
 		return math.Exp(num)
 	}
 	return math.Exp(num - (logGammaVariate(src, f.D2/2) - math.Log(f.D2/2)))

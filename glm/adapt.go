@@ -18,7 +18,7 @@ type adapted struct {
 
 // adapt finds the fields of the fit in a new source.
 func (f *Fit) adapt(rows Source) (*adapted, error) {
-	if rows == nil {
+	if d, ok := rows.(*Data); rows == nil || ok && d == nil {
 		return nil, &ColumnError{Row: -1, Err: ErrEmpty}
 	}
 	a := &adapted{src: rows, schema: f.j.src.Schema()}

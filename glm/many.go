@@ -39,7 +39,7 @@ func NewWorkspace(n, p int) (*Workspace, error) {
 
 // Compare fits y by the first q columns and by all of them, and returns the
 // arithmetic of the F comparison; its method F gives F, p and log p. x holds p
-// columns of n values within ±1e150; nothing of it is kept. Errors are
+// columns of n values of size 1e-130 to 1e150, or zero; nothing of it is kept. Errors are
 // *ColumnError, with the column's number as its name, for what is not finite or out of range, and
 // lrt.ErrInvalid for wrong shapes.
 func (w *Workspace) Compare(x [][]float64, y []float64, q int) (lrt.Linear, error) {
@@ -56,6 +56,9 @@ func (w *Workspace) Compare(x [][]float64, y []float64, q int) (lrt.Linear, erro
 	s.Factor(x, y, w.tol)
 	if sum := s.YY + s.Spread(); math.IsNaN(sum) || math.IsInf(sum, 0) {
 		return lrt.Linear{}, w.blame(x, y)
+	}
+	if err := w.underflow(x, y); err != nil {
+		return lrt.Linear{}, err
 	}
 	tiny := 4 * 0x1p-104 * s.YY
 	l := lrt.Linear{RankE1: w.n, Numerator: s.Between(q, w.p), Denominator: s.RSS, M: float64(w.n), Certified: true}
@@ -77,6 +80,32 @@ func (w *Workspace) Compare(x [][]float64, y []float64, q int) (lrt.Linear, erro
 		w.SE[j] = math.Sqrt(w.SE[j] * v)
 	}
 	return l, nil
+}
+
+// underflow refuses a response or a column whose squares fall below the range: it would
+// pass for zero.
+func (w *Workspace) underflow(x [][]float64, y []float64) error {
+	below := func(name string, c []float64) error {
+		for i, v := range c {
+			if v != 0 && math.Abs(v) < 1e-130 {
+				return &ColumnError{Column: name, Row: i, Text: fmt.Sprint(v), Err: fmt.Errorf("%w: multiply the column by a constant", ErrOverflow)}
+			}
+		}
+		return nil
+	}
+	if w.small.YY < 1e-260 {
+		if err := below("response", y); err != nil {
+			return err
+		}
+	}
+	for j, kept := range w.small.Kept {
+		if !kept {
+			if err := below(fmt.Sprintf("column %d", j), x[j]); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
 }
 
 // blame finds what made the cross-products leave the range.

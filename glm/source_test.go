@@ -162,3 +162,38 @@ func TestAbsentSpaces(t *testing.T) {
 		t.Errorf("value out of range: %v", err)
 	}
 }
+
+// TestWorkspaceBelowRange: values whose squares underflow are refused, not taken for zero.
+func TestWorkspaceBelowRange(t *testing.T) {
+	w, err := glm.NewWorkspace(5, 2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	ones, x, y := []float64{1, 1, 1, 1, 1}, []float64{1, 2, 3, 5, 4}, []float64{2, 1, 4, 3, 7}
+	times := func(c []float64, a float64) []float64 {
+		out := make([]float64, len(c))
+		for i, v := range c {
+			out[i] = v * a
+		}
+		return out
+	}
+	for _, c := range []struct{ x, y []float64 }{{x, times(y, 1e-300)}, {times(x, 1e-300), y}} {
+		var ce *glm.ColumnError
+		if _, err := w.Compare([][]float64{ones, c.x}, c.y, 1); !errors.Is(err, glm.ErrOverflow) || !errors.As(err, &ce) {
+			t.Errorf("%v", err)
+		}
+	}
+	if l, err := w.Compare([][]float64{ones, times(x, 1e-120)}, times(y, 1e-120), 1); err != nil || math.IsNaN(l.Numerator) {
+		t.Error(l, err)
+	}
+	if _, err := w.Compare([][]float64{ones, times(ones, 0)}, y, 1); err != nil { // a column of zeros is spanned, not small
+		t.Error(err)
+	}
+	f, err := model(t, field(5, 40).data(t), nil, one, cx).Fit(context.Background(), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, _, err := f.Predict(context.Background(), (*glm.Data)(nil)); !errors.Is(err, glm.ErrEmpty) {
+		t.Errorf("nil rows: %v", err)
+	}
+}
