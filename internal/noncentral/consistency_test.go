@@ -185,8 +185,8 @@ func TestFBentAndCircle(t *testing.T) {
 	r := draw{rand.New(rand.NewPCG(7, 5))}
 	var tail, kernel worst
 	for range rounds(20000) {
-		d1, d2, lambda, x := r.point()
-		d2 = r.log(24, 60)
+		d1, _, lambda, x := r.point()
+		d2 := r.log(24, 60)
 		if r.IntN(2) == 0 {
 			d1, lambda = r.log(1, 1e3), r.log(1, 1e3)
 			x = (1 + lambda/d1) * math.Exp(r.NormFloat64())
