@@ -88,7 +88,7 @@ func drawn(ctx context.Context, s *Settings, n int, f func(ctx context.Context, 
 					front++
 					if progress != nil {
 						if _, e := unpanicked(func() (float64, error) { progress(front, n); return 0, nil }); e != nil {
-							failure, stop = fmt.Errorf("Progress: %w", e), true
+							failure, stop = fmt.Errorf("settings: function Progress: %w", e), true
 							cancel()
 							break
 						}
