@@ -80,12 +80,10 @@ func (p *product) node(w, z float64, derivative bool) (in, out, slope float64) {
 		switch {
 		case q < 0.5:
 			l = math.Log1p(-q)
-		case math.IsInf(b, -1):
-			l = special.NormalLogLower(a)
-		case math.IsInf(a, 1):
-			l = special.NormalLogUpper(b)
-		default:
+		case a-b < 1: // its width from the limits themselves, which may be tiny beside t
 			l = special.NormalAround(0.5*(g.upper+g.lower)*w/g.rest-t, 0.5*(g.upper-g.lower)*w/g.rest)
+		default:
+			l = logInterval(b, a)
 		}
 		sum += g.count * l
 		missed += g.count * q

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"math"
+	"math/rand/v2"
 	"os"
 	"testing"
 
@@ -213,6 +214,10 @@ func TestRectangleErrors(t *testing.T) {
 		{"no limits", Rectangle{same(4, -inf), same(4, inf), equicorrelated(4, 0.2), 5}, 1},
 		{"no limits, lattice", Rectangle{same(6, -inf), same(6, inf), differencesOnly(4), 5}, 1},
 		{"nothing", Rectangle{same(4, 1), same(4, 1), equicorrelated(4, 0.2), 5}, 0},
+		{"limits at infinity", Rectangle{[]float64{inf, -1, -2}, []float64{inf, 1, 3}, equicorrelated(3, 0.2), 5}, 0},
+		{"limits at infinity, three", Rectangle{[]float64{-1, -inf, -2}, []float64{1, -inf, 3}, symmetric([]float64{1, 0.5, -0.3}, []float64{0.5, 1, 0.2}, []float64{-0.3, 0.2, 1}), 5}, 0},
+		{"limits at infinity, lattice", Rectangle{[]float64{-1, -inf, -2, -3, -1, -1}, []float64{1, -inf, 3, 4, 1, 1}, differencesOnly(4), 5}, 0},
+		{"limits at infinity, plane", Rectangle{[]float64{-1, -inf, -2}, []float64{1, -inf, 3}, differencesOnly(3), 5}, 0},
 		{"equal pair", Rectangle{same(2, -1), same(2, 1), equicorrelated(2, 1), inf}, 0.68268949213708590},
 		{"opposite pair", Rectangle{same(2, 0), same(2, 1), equicorrelated(2, -1), inf}, 0},
 	} {
@@ -300,4 +305,79 @@ func TestRectanglePlane(t *testing.T) {
 			t.Errorf("nu=%v: %+v, want %v", nu, half, want)
 		}
 	}
+}
+
+// TestRectangleSweep draws correlations of any rank and limits of any kind, and
+// compares the exact methods with the lattice.
+func TestRectangleSweep(t *testing.T) {
+	n := 80
+	if os.Getenv("SUBSUME_LONG") == "1" {
+		n = 1500
+	}
+	rng := rand.New(rand.NewPCG(41, 5))
+	limit := func() float64 {
+		switch rng.IntN(9) {
+		case 0:
+			return math.Inf(1)
+		case 1:
+			return math.Inf(-1)
+		case 2:
+			return 0
+		case 3:
+			return math.Copysign(math.Exp(1400*(rng.Float64()-0.5)), rng.Float64()-0.5)
+		}
+		return 3 * rng.NormFloat64()
+	}
+	far := 0
+	for range n {
+		k, rank := rng.IntN(5)+1, rng.IntN(5)+1
+		a := make([][]float64, k)
+		for i := range a {
+			a[i] = make([]float64, rank)
+			s := 0.0
+			for j := range a[i] {
+				a[i][j] = rng.NormFloat64()
+				s += a[i][j] * a[i][j]
+			}
+			for j := range a[i] {
+				a[i][j] /= math.Sqrt(s)
+			}
+		}
+		c := mat.NewSymDense(k, nil)
+		r := Rectangle{make([]float64, k), make([]float64, k), c, math.Exp(math.Log(0.05) + rng.Float64()*30)}
+		if rng.IntN(3) == 0 {
+			r.Nu = math.Inf(1)
+		}
+		for i := range k {
+			for j := range i {
+				c.SetSym(i, j, math.Max(-1, math.Min(1, dot(a[i], a[j]))))
+			}
+			c.SetSym(i, i, 1)
+			x, y := limit(), limit()
+			r.Lower[i], r.Upper[i] = math.Min(x, y), math.Max(x, y)
+		}
+		if r.Nu > 1e12 {
+			r.Nu = math.Inf(1)
+		}
+		p, err := r.Probability(context.Background(), &RectangleSettings{MaxPoints: 11000})
+		if err != nil && !errors.Is(err, ErrTolerance) {
+			t.Fatalf("%+v, correlations %v: %v", r, mat.Formatted(c), err)
+		}
+		if !(p.Inside >= 0 && p.Inside <= 1+1e-12 && p.Outside >= -1e-12) || math.Abs(p.Inside+p.Outside-1) > 1e-9 {
+			t.Fatalf("%+v, correlations %v: %+v", r, mat.Formatted(c), p)
+		}
+		q, err := r.Probability(context.Background(), &RectangleSettings{MaxPoints: 60000, Simulate: true, Seed: 3})
+		if err != nil && !errors.Is(err, ErrTolerance) {
+			t.Fatal(err)
+		}
+		if e := math.Abs(p.Inside - q.Inside); e > p.Error+q.Error+1e-9 {
+			if far++; e > 5*(p.Error+q.Error)+1e-7 {
+				t.Errorf("%v limits %v to %v, nu=%v, correlations\n%v: %+v, lattice %+v", k, r.Lower, r.Upper, r.Nu, mat.Formatted(c), p, q)
+			}
+		}
+	}
+	if far > n/20 {
+		t.Errorf("%d of %d lattice results are farther off than they say", far, n)
+	}
+	t.Logf("%d of %d beyond their error estimates", far, n)
 }

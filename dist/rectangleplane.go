@@ -181,12 +181,18 @@ func (p *planeRegion) segment(w, a, b float64, sin, sout *scaledSum) {
 // logInterval is log P(a < Z <= b), logOutside that of its complement.
 func logInterval(a, b float64) float64 {
 	switch {
-	case math.IsInf(a, -1):
-		return special.NormalLogLower(b)
-	case math.IsInf(b, 1):
-		return special.NormalLogUpper(a)
+	case !(b > a):
+		return math.Inf(-1)
+	case b-a < 1: // narrow: by its middle, without cancellation
+		return special.NormalAround(a+0.5*(b-a), 0.5*(b-a))
+	case a >= 0:
+		l := special.NormalLogUpper(a)
+		return l + math.Log1p(-math.Exp(special.NormalLogUpper(b)-l))
+	case b <= 0:
+		l := special.NormalLogLower(b)
+		return l + math.Log1p(-math.Exp(special.NormalLogLower(a)-l))
 	}
-	return special.NormalAround(0.5*(a+b), 0.5*(b-a))
+	return math.Log1p(-(special.NormalUpper(b) + special.NormalLower(a)))
 }
 
 func logOutside(a, b float64) float64 {

@@ -171,12 +171,6 @@ func (u *unitLaw) rangeTails(w float64, density bool) unitTails {
 	return u.rangeUpper(w, density)
 }
 
-// gaussEight is the positive half of the eight-point Gauss-Legendre rule.
-var (
-	gaussEightX = [4]float64{0.18343464249564980, 0.52553240991632899, 0.79666647741362674, 0.96028985649753623}
-	gaussEightW = [4]float64{0.36268378337836198, 0.31370664587788729, 0.22238103445337447, 0.10122853629037626}
-)
-
 // rangeSmall serves w < 0.7. D(t)/D(0) = exp(-t²/2) G(t)/G(0) with
 // G(t) = ∫_0^1 exp(-(a x)²/2) cosh(a t x) dx by eight Gauss points on [-1, 1],
 // the hyperbolic cosines by their three-term recurrence along the lattice.
@@ -188,8 +182,8 @@ func (u *unitLaw) rangeSmall(w float64, density bool) unitTails {
 	var g [4]float64
 	g0 := 0.0
 	for m := range 4 {
-		x := a * gaussEightX[m]
-		g[m] = gaussEightW[m] * math.Exp(-0.5*x*x)
+		x := a * special.Gauss8X[m]
+		g[m] = special.Gauss8W[m] * math.Exp(-0.5*x*x)
 		g0 += g[m]
 		cur[m], prev[m] = 1, math.Cosh(h*x)
 		c[m] = 2 * prev[m]

@@ -130,11 +130,11 @@ func NormalCentral(x float64) float64 {
 	return NormalUpper(-x) - 0.5
 }
 
-// Half of the abscissas and weights of the eight-point Gauss-Legendre rule on
-// [-1, 1] (Abramowitz and Stegun 25.4.30, recomputed at 40 digits).
+// Gauss8X and Gauss8W are the positive half of the eight-point Gauss-Legendre
+// rule on [-1, 1] (Abramowitz and Stegun 25.4.30, recomputed at 40 digits).
 var (
-	gauss8x = [4]float64{0.18343464249564980, 0.52553240991632899, 0.79666647741362674, 0.96028985649753623}
-	gauss8w = [4]float64{0.36268378337836198, 0.31370664587788729, 0.22238103445337447, 0.10122853629037626}
+	Gauss8X = [4]float64{0.18343464249564980, 0.52553240991632899, 0.79666647741362674, 0.96028985649753623}
+	Gauss8W = [4]float64{0.36268378337836198, 0.31370664587788729, 0.22238103445337447, 0.10122853629037626}
 )
 
 // NormalBetween returns P(a < Z <= b) for a <= b with relative accuracy: also
@@ -167,9 +167,9 @@ func narrow(m, h float64) float64 {
 		return 1
 	}
 	s := 0.0
-	for i, x := range gauss8x {
+	for i, x := range Gauss8X {
 		x *= h
-		s += gauss8w[i] * math.Exp(-0.5*x*x) * math.Cosh(m*x)
+		s += Gauss8W[i] * math.Exp(-0.5*x*x) * math.Cosh(m*x)
 	}
 	return s
 }
