@@ -159,7 +159,7 @@ func (p *product) inside(w float64, derivative bool) (in, slope tail) {
 	top := f(0)
 	if !p.symmetric {
 		h := 2.0
-		for n := 0; n < 300 && h > 0.1; n++ {
+		for n := 0; n < 300 && h > 0.1 && h < 1e9; n++ {
 			switch l, r := f(mode-h), f(mode+h); {
 			case l > top && l >= r:
 				mode, top = mode-h, l

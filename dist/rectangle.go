@@ -332,8 +332,9 @@ func (u *unitRectangle) scaleSum(nu, h float64) (in, out scaledSum) {
 		for i, count := min(dir, 0), 0; count < 100000; i, count = i+dir, count+1 {
 			v := h * float64(i)
 			e := -nu * chiCurve(v)
-			if count > 0 && e < math.Min(sums[0].ref, sums[1].ref)-45 || e < -1e300 {
-				break // a probability at known scale is at most 1
+			// A probability at known scale is at most 1, and one below e^-800 is 0.
+			if count > 0 && e < math.Max(-800, math.Min(sums[0].ref, sums[1].ref))-45 {
+				break
 			}
 			w := math.Exp(v)
 			a, b := u.tails(w)

@@ -310,7 +310,7 @@ func TestRectanglePlane(t *testing.T) {
 // TestRectangleSweep draws correlations of any rank and limits of any kind, and
 // compares the exact methods with the lattice.
 func TestRectangleSweep(t *testing.T) {
-	n := 80
+	n := 30
 	if os.Getenv("SUBSUME_LONG") == "1" {
 		n = 1500
 	}
