@@ -72,3 +72,24 @@ func TestProgressPanics(t *testing.T) {
 		t.Errorf("draw: %v", err)
 	}
 }
+
+// TestGammaWithoutEnd: a shape of its own for one value, or for equal ones, has no
+// largest likelihood; a shape shared with other values has.
+func TestGammaWithoutEnd(t *testing.T) {
+	for _, s := range []Samples{{{1}, {2, 3, 4}}, {{2, 2, 2}, {1, 3, 4}}} {
+		full, err := GammaSamples(s)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := full.Maximize(context.Background()); !errors.Is(err, ErrUnbounded) {
+			t.Errorf("%v: %v, want ErrUnbounded", s, err)
+		}
+		shared, err := full.Restrict(Equate("shape[1]", "shape[2]"))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := shared.Maximize(context.Background()); err != nil {
+			t.Errorf("%v, one shape: %v", s, err)
+		}
+	}
+}

@@ -23,7 +23,7 @@ func Multinomial(counts []float64) (*Declared, error) {
 	n := 0.0
 	for i, v := range counts {
 		if !(v >= 0) || v != math.Trunc(v) || v > 1e15 {
-			return nil, fmt.Errorf("lrt: multinomial: %w: cell %d has the count %g, want a whole number", ErrInvalid, i+1, v)
+			return nil, fmt.Errorf("lrt: multinomial: %w: cell %d has the count %g, want a whole number up to 1e15", ErrInvalid, i+1, v)
 		}
 		n += v
 	}

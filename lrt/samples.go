@@ -343,5 +343,31 @@ func GammaSamples(s Samples) (*Declared, error) {
 		func(r *rand.Rand, shape, scale float64) float64 {
 			return scale / 2 * dist.ChiSquared{K: 2 * shape}.Rand(r)
 		})
+	// Where all values that a shape governs are equal the likelihood grows with it
+	// without end, slowly enough for rounding to feign a maximum.
+	inner := m.LogLikelihood
+	m.LogLikelihood = func(s Samples, th []float64) float64 {
+		for g, shape := range th[:k] {
+			if shape > 1e10 && s.tied(func(other int) bool { return th[other] == th[g] }) {
+				return inf
+			}
+		}
+		return inner(s, th)
+	}
 	return Bind(m, Observe(s, total))
+}
+
+// tied reports whether in each group that is asked for all values are equal.
+func (s Samples) tied(asked func(g int) bool) bool {
+	for g, x := range s {
+		if !asked(g) {
+			continue
+		}
+		for _, v := range x {
+			if v != x[0] {
+				return false
+			}
+		}
+	}
+	return true
 }
