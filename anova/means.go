@@ -108,6 +108,9 @@ func Means(ctx context.Context, m *glm.Model, factors []string, o *MeansOptions,
 		return nil, err
 	}
 	for i := range g.list {
+		if err := ctx.Err(); err != nil { // thousands of groups take a while
+			return nil, err
+		}
 		w := make([]float64, len(g.list))
 		w[i] = 1
 		e, err := g.rows.Estimate(g.over(w))
