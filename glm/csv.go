@@ -66,7 +66,7 @@ const (
 //   - A number has an optional sign, digits with at most one decimal mark, an
 //     optional exponent; no separators of thousands. Every digit is kept, as by
 //     Decimals. NaN and infinities, and numbers beyond the float64 range, are errors
-//     in a column of numbers unless declared missing.
+//     in a column of numbers unless declared missing; one too small for float64 is zero.
 //   - Whole numbers stay numbers; where they name groups, use Kinds or
 //     Data.Categorical.
 //
