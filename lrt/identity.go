@@ -67,6 +67,9 @@ func (a ID) Same(b ID) bool {
 	return err == nil && x == y
 }
 
+// undigested reports whether the content has an identity but cannot write itself.
+func (a ID) undigested() bool { return a.p != nil && a.p.write == nil }
+
 // String returns the first digits of the digest, "none" for the zero ID and
 // "undigested" where there is no digest.
 func (a ID) String() string {
@@ -91,6 +94,9 @@ type Observations struct{ Rows, Response, Weights ID }
 func (o Observations) Check(other Observations) error {
 	switch {
 	case !o.Rows.Same(other.Rows):
+		if o.Rows.undigested() && other.Rows.undigested() {
+			return fmt.Errorf("%w: two samples without a digest: derive both spaces from one lrt.Observe", ErrDifferentObservations)
+		}
 		return fmt.Errorf("%w: different rows (fit both on the rows complete for both)", ErrDifferentObservations)
 	case !o.Response.Same(other.Response):
 		return fmt.Errorf("%w: different response", ErrDifferentObservations)
