@@ -258,7 +258,7 @@ func (f *Factor) cholesky(s Settings) {
 		t := len(f.piv)
 		rk := f.r[k]
 		norm := f.norm(k)
-		left := rk.at(k).Sub(dot(rk, rk, t))
+		left := less(rk.at(k), rk, rk, t)
 		ratio := left.Hi / norm
 		if !(ratio > tol2) || left.Hi <= 0 || f.live+t >= f.g.weighty || ratio < doubtful && ratio <= f.noise(k, t, norm) {
 			f.setAside(k, t, ratio, norm)
@@ -296,7 +296,7 @@ func (f *Factor) cholesky(s Settings) {
 func (f *Factor) step(k, t int, inv dd.DD, lo, hi int) {
 	rk := f.r[k]
 	j := lo
-	for ; j+3 < hi; j += 4 {
+	for ; t > short && j+3 < hi; j += 4 {
 		ds := dot4(rk, f.r[j], f.r[j+1], f.r[j+2], f.r[j+3], t)
 		for i := range ds {
 			c := f.r[j+i]
@@ -305,8 +305,22 @@ func (f *Factor) step(k, t int, inv dd.DD, lo, hi int) {
 	}
 	for ; j < hi; j++ {
 		c := f.r[j]
-		c.set(t, c.at(k).Sub(dot(rk, c, t)).Mul(inv))
+		c.set(t, less(c.at(k), rk, c, t).Mul(inv))
 	}
+}
+
+// short is the length up to which a dot product is quicker without kernels.
+const short = 4
+
+// less returns x − Σ a·b of n elements.
+func less(x dd.DD, a, b vec, n int) dd.DD {
+	if n > short {
+		return x.Sub(dot(a, b, n))
+	}
+	for i := range n {
+		x = x.Sub(dd.DD{Hi: a.hi[i], Lo: a.lo[i]}.Mul(dd.DD{Hi: b.hi[i], Lo: b.lo[i]}))
+	}
+	return x
 }
 
 // doubtful is the squared pivot below which rounding is looked at.
