@@ -432,6 +432,10 @@ func (s *search) check(q *peak) error {
 	if s.ev.err != nil {
 		return s.ev.err
 	}
+	if names := p.beyondFloats(q); len(names) > 0 {
+		return &ModelError{Model: s.ev.core.name, Names: s.ev.core.names, Theta: append([]float64(nil), p.root(q.u)...),
+			Err: fmt.Errorf("%w: the curvature of the log likelihood along %s leaves the floating-point range: give the data in units nearer one", ErrNotConverged, strings.Join(names, ", "))}
+	}
 	if x := p.root(q.u); x == nil {
 		return &ModelError{Model: s.ev.core.name, Err: fmt.Errorf("%w: the search left the ranges", ErrNotConverged)}
 	}
@@ -588,6 +592,22 @@ func (p *problem) unit(q *peak, j int) float64 {
 		return a
 	}
 	return 1
+}
+
+// beyondFloats names the parameters whose curvature at a summit could not be
+// measured because the steps that resolve it are too small for float64: what was
+// found is then the start and no maximum.
+func (p *problem) beyondFloats(q *peak) []string {
+	if p.co.m == 0 || q.info != nil || len(q.escaped) > 0 || len(q.walls) > 0 {
+		return nil
+	}
+	var names []string
+	for j, s := range p.scale {
+		if !(s > 1e-60) {
+			names = appendNew(names, p.co.names(j)...)
+		}
+	}
+	return names
 }
 
 // moved names the parameters that take part in direction v.
