@@ -21,15 +21,15 @@ func (s *csvScan) run(ctx context.Context) error {
 	s.cut()
 	s.sniff()
 	s.makeRoom()
-	todo := make([]int, len(s.chunks))
-	for i := range todo {
-		todo[i] = i
+	waiting := make([]int, len(s.chunks))
+	for i := range waiting {
+		waiting[i] = i
 	}
-	for len(todo) > 0 {
-		if err := s.each(ctx, todo); err != nil {
+	for len(waiting) > 0 {
+		if err := s.each(ctx, waiting); err != nil {
 			return fmt.Errorf("glm: reading %s: %w", sourceName(s.options), err)
 		}
-		todo = todo[:0]
+		waiting = waiting[:0]
 		for i := range s.chunks {
 			k := &s.chunks[i]
 			if k.err != nil {
@@ -37,7 +37,7 @@ func (s *csvScan) run(ctx context.Context) error {
 			}
 			for f := range s.columns {
 				if s.columns[f].labels.Load() != k.labelled[f] {
-					todo = append(todo, i)
+					waiting = append(waiting, i)
 					break
 				}
 			}
@@ -156,18 +156,18 @@ func (s *csvScan) makeRoom() {
 }
 
 // each parses the listed chunks.
-func (s *csvScan) each(ctx context.Context, todo []int) error {
+func (s *csvScan) each(ctx context.Context, waiting []int) error {
 	var next atomic.Int64
 	work := func() {
 		for {
 			i := int(next.Add(1)) - 1
-			if i >= len(todo) || ctx.Err() != nil {
+			if i >= len(waiting) || ctx.Err() != nil {
 				return
 			}
-			s.parse(&s.chunks[todo[i]])
+			s.parse(&s.chunks[waiting[i]])
 		}
 	}
-	if workers := min(s.workers, len(todo)); workers > 1 {
+	if workers := min(s.workers, len(waiting)); workers > 1 {
 		var group sync.WaitGroup
 		for range workers {
 			group.Go(work)
