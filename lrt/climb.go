@@ -217,6 +217,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 	trial := make([]float64, m)
 	gNew, y := make([]float64, m), make([]float64, m)
 	stalls := 0
+	cut := false // the radius is what a wall left of it: a small gain within it says nothing
 	for s.iterations = 0; s.iterations < 1000 && p.ev.err == nil; s.iterations++ {
 		length, damp := r.solve(s.g, radius)
 		gain := r.promise(s.g)
@@ -288,9 +289,13 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 			radius = 0.25 * length
 			if math.IsNaN(f) {
 				p.bump(trial, &s)
+				cut = cut || len(s.walls) > 0
 			}
 			if gain > 16*p.noise && radius > 1e-9 && s.iterations < 990 {
 				continue
+			}
+			if cut && damp > 0 {
+				break
 			}
 			if gain < closeTol {
 				s.decrement, s.converged = gain, true
@@ -310,7 +315,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 			}
 			break
 		}
-		s.walls = nil
+		s.walls, cut = nil, cut && damp > 0
 		if rho > 0.75 && length > 0.7*radius {
 			radius = 3 * radius
 		} else if rho < 0.25 {
@@ -342,7 +347,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 			r.update(r.s, y)
 		}
 		p.rescale(r.curv)
-		if f-before <= 4*p.noise && gain < 1e-8 {
+		if f-before <= 4*p.noise && gain < 1e-8 && !cut {
 			s.decrement = gain
 			s.converged = true
 			break
@@ -358,7 +363,10 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		s.edge, s.escaped, s.rising = nil, []int{j}, true
 	}
 	if !s.converged && len(s.edge)+len(s.escaped) == 0 {
-		s.walls = p.blocked(&s, r)
+		hit := s.walls
+		if s.walls = p.blocked(&s, r); len(s.walls) == 0 && cut {
+			s.walls = hit
+		}
 	}
 	return s
 }

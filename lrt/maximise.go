@@ -210,6 +210,12 @@ func prime(j int) int {
 // into, and repairs what the checks find.
 func (s *search) from(p *problem, eq echelon, u []float64, hs []held, depth int) (*peak, error) {
 	sm := p.climb(u, true)
+	if s.ev.err == nil && p.rough == 0 && p.isRough(sm.u) {
+		if len(sm.edge)+len(sm.escaped) == 0 {
+			u = sm.u
+		}
+		sm = p.climb(u, true)
+	}
 	if s.ev.err != nil {
 		return nil, s.ev.err
 	}

@@ -2,6 +2,7 @@ package lrt
 
 import (
 	"math"
+	"math/bits"
 )
 
 // problem is one maximisation: a frame's free coordinates u over the data.
@@ -17,6 +18,7 @@ type problem struct {
 	scale []float64 // about one standard error, by coordinate: the unit of difference steps
 	first []float64 // the unit that a climb's first look found, by coordinate
 	noise float64   // rounding of a log likelihood here
+	rough float64   // and what was measured of it, where that is much more than its size suggests
 	doubt []float64 // curvature that rounding alone could have made, by coordinate
 
 	base    []float64 // log likelihoods of the observations at the current point
@@ -125,10 +127,53 @@ func (p *problem) value(u []float64) float64 {
 
 // settle makes the observations' values of the last call of value the base.
 func (p *problem) settle(f float64) {
-	p.noise = 4 * epsilon * (1 + math.Abs(f))
+	p.noise = math.Max(4*epsilon*(1+math.Abs(f)), p.rough)
 	if p.each {
 		p.base, p.work = p.work, p.base
 	}
+}
+
+// isRough measures the rounding of a log likelihood that is a small difference of
+// large terms: its second difference over a millionth of a standard error and less is
+// rounding and nothing else, and its values there are multiples of the last place of the
+// large terms. It reports whether that is much more than the size of the log
+// likelihood suggests, and lets p.noise know.
+func (p *problem) isRough(u []float64) bool {
+	if p.each || p.gradient || p.co.m == 0 {
+		return false
+	}
+	f := p.value(u)
+	a, b := make([]float64, len(u)), make([]float64, len(u))
+	second, place := 0.0, lastPlace(f)
+	for _, t := range []float64{1e-8, 3e-8} {
+		for j := range u {
+			h := p.step(u, j, t)
+			a[j], b[j] = u[j]+h, u[j]-h
+		}
+		fa, fb := p.value(a), p.value(b)
+		second = math.Max(second, math.Abs(fa+fb-2*f))
+		place = math.Min(place, math.Min(lastPlace(fa), lastPlace(fb)))
+	}
+	for j := range u {
+		a[j] = u[j] + p.step(u, j, 0.5)
+	}
+	if far := p.value(a); far != f && second < place { // rounding happened to agree, not to vanish
+		second = math.Max(second, math.Min(place, lastPlace(far)))
+	}
+	if !(second > 64*4*epsilon*(1+math.Abs(f))) || math.IsInf(second, 1) {
+		return false
+	}
+	p.rough = second
+	return true
+}
+
+// lastPlace returns the largest power of two that x is a multiple of, NaN without one.
+func lastPlace(x float64) float64 {
+	if x == 0 || math.IsNaN(x) || math.IsInf(x, 0) {
+		return nan
+	}
+	m, e := math.Frexp(x)
+	return math.Ldexp(1, e-53+bits.TrailingZeros64(uint64(math.Abs(math.Ldexp(m, 53)))))
 }
 
 // step is a displacement of about t standard errors that the arithmetic
