@@ -265,7 +265,9 @@ func positiveModel(name string, params []Param, k int, term func(s Samples, g in
 
 // WeibullSamples declares samples that follow Weibull laws with the parameters
 // shape[1] … and scale[1] …: log density log(c/b) + (c − 1) log(x/b) − (x/b)^c.
-// They are fitted numerically with their gradient. λ of equal shapes, or of equal
+// Free laws, equal shapes, and equal shapes and scales are solved by the one equation
+// that the shape is a root of; other spaces are fitted numerically with their
+// gradient. λ of equal shapes, or of equal
 // shapes and scales, is pivotal (Thoman and Bain 1969), so that a Bootstrap is
 // exact. A group needs two different values.
 func WeibullSamples(s Samples) (*Declared, error) {
@@ -298,6 +300,7 @@ func WeibullSamples(s Samples) (*Declared, error) {
 		func(r *rand.Rand, shape, scale float64) float64 {
 			return scale * math.Pow(r.ExpFloat64(), 1/shape)
 		})
+	m.ClosedFor = weibullSolved
 	m.Pivotal = func(r, f *Declared) bool {
 		return f.Free() == 2*k && equalBlock(r, "shape", k) && (r.Free() == k+1 || r.Free() == 2 && equalBlock(r, "scale", k))
 	}
@@ -324,11 +327,13 @@ func GammaSamples(s Samples) (*Declared, error) {
 	// The data enter through their sums alone.
 	m := positiveModel("gamma samples", append(Block(k, Positive("shape")), Block(k, Positive("scale"))...), k,
 		func(s Samples, g int, a, b float64) (l, da, db float64) {
+			// About the mean and the largest likelihood of a mean, so that terms in a, which
+			// can be a million for values that differ little, do not cancel each other.
 			n := float64(len(s[g]))
-			x, lx := sum(s[g]), sum(logsOf(s[g]))
-			lg, _ := math.Lgamma(a)
-			lb := math.Log(b)
-			return (a-1)*lx - x/b - n*(a*lb+lg), lx - n*(lb+mathext.Digamma(a)), (x/b - n*a) / b
+			mean, lx := sum(s[g])/n, sum(logsOf(s[g]))
+			r := mean / a / b
+			l = gammaTop(a)*n - lx + a*sum(logsAbout(s[g], mean)) + n*a*(math.Log1p(r-1)-(r-1))
+			return l, lx - n*(math.Log(b)+mathext.Digamma(a)), n * a * (r - 1) / b
 		},
 		func(x []float64) (shape, scale float64) { // Thom (1958): from log mean − mean log
 			n := float64(len(x))
@@ -355,6 +360,29 @@ func GammaSamples(s Samples) (*Declared, error) {
 		return inner(s, th)
 	}
 	return Bind(m, Observe(s, total))
+}
+
+// gammaTop returns a log a − a − log Γ(a), from 16 up by the series DLMF 5.11.1.
+func gammaTop(a float64) float64 {
+	if a < 16 {
+		lg, _ := math.Lgamma(a)
+		return a*math.Log(a) - a - lg
+	}
+	q := 1 / (a * a)
+	return 0.5*math.Log(a/(2*math.Pi)) - (1./12-q*(1./360-q*(1./1260-q/1680)))/a
+}
+
+// logsAbout returns log(x/m), to the last digits for values near m.
+func logsAbout(x []float64, m float64) []float64 {
+	out := make([]float64, len(x))
+	for i, v := range x {
+		if d := (v - m) / m; math.Abs(d) < 0.5 {
+			out[i] = math.Log1p(d)
+		} else {
+			out[i] = math.Log(v) - math.Log(m)
+		}
+	}
+	return out
 }
 
 // tied reports whether in each group that is asked for all values are equal.

@@ -141,7 +141,7 @@ func TestPositiveSamples(t *testing.T) {
 					if scale == 1 {
 						base = r.Statistic
 						bare := *full.core
-						bare.gradient, bare.start = nil, nil
+						bare.gradient, bare.start, bare.closedAt = nil, nil, nil
 						fit, err := (&Declared{core: &bare, frame: full.frame}).Maximize(bg)
 						if err != nil || math.Abs(fit.LogLikelihood-r.Pair.Full.LogLikelihood) > 1e-8 {
 							t.Errorf("trial %d: by differences %.12g, by gradient %.12g, %v", trial, fit.LogLikelihood, r.Pair.Full.LogLikelihood, err)
