@@ -1,7 +1,9 @@
 package glm
 
 import (
+	"fmt"
 	"math"
+	"strings"
 
 	"subsume.example/internal/dd"
 	"subsume.example/internal/linalg"
@@ -161,6 +163,9 @@ func (m *Model) weights(names []string, coef []float64) ([]weight, error) {
 			return nil, m.unknown(n)
 		}
 		ws[i] = weight{t, c, dd.From(coef[i])}
+	}
+	if ws = m.asDisplayed(ws); nothing(ws) {
+		return nil, &CoefficientError{Name: strings.Join(names, ", "), Err: fmt.Errorf("%w: it is 0 by the choice of the reference level", ErrNotEstimable)}
 	}
 	return ws, nil
 }

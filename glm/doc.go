@@ -54,10 +54,12 @@
 // a constant those of a factor alone are the means of its levels. Which it
 // is does not change the space, nor any comparison. A numeric field serves as a
 // factor, too: its distinct values are the levels in ascending order, named by
-// their shortest decimals. Where two columns share a name, the first is meant.
+// their shortest decimals. A name that two columns share is refused.
 //
 // Restrict takes linear equations between coefficients by these names:
-// lrt.Fix("x", 0.5), lrt.Equate("a=q", "a=r"), lrt.Equations for any other. The
+// lrt.Fix("x", 0.5), lrt.Equate("a=q", "a=r"), lrt.Equations for any other. Beside
+// a constant lrt.Fix("a=q", 0.5) speaks of the difference from the reference, as the
+// fit shows it; with products of factors state differences of levels or cells. The
 // space then lies about another origin, and nesting is decided with it.
 //
 // # Rows, missing values, weights

@@ -35,18 +35,18 @@ func ExampleModel_Fit() {
 	// n = 12, rank 4, residual SD 0.1142 on 8 degrees of freedom, R² 0.948
 }
 
-// A difference between two levels, neither of which is the reference; and a
-// function that the data cannot tell.
+// A difference between two levels, neither of which is the reference; and the
+// reference itself, of which there is nothing to tell.
 func ExampleFit_Combination() {
 	f := substrates(context.Background())
 	e, err := f.Combination(glm.Weight{Name: "substrate=bran", Coef: 1}, glm.Weight{Name: "substrate=husk", Coef: -1})
 	fmt.Printf("bran − husk: %.4f ± %.4f, %.4f to %.4f, t = %.3f %v\n", e.Value, e.SE, e.Lower, e.Upper, e.T, err)
 
-	_, err = f.Combination(glm.Weight{Name: "substrate=bran", Coef: 1})
+	_, err = f.Combination(glm.Weight{Name: "substrate=straw", Coef: 1})
 	fmt.Println(errors.Is(err, glm.ErrNotEstimable), err)
 	// Output:
 	// bran − husk: 0.6022 ± 0.0873, 0.4009 to 0.8035, t = 6.899 <nil>
-	// true glm: not estimable from these data: it involves "substrate=straw", which other columns span or no row has; state differences between levels
+	// true glm: coefficient "substrate=straw": not estimable from these data: it is 0 by the choice of the reference level
 }
 
 func ExampleFit_Coefficient() {

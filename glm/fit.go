@@ -403,9 +403,10 @@ type Weight struct {
 	Coef float64
 }
 
-// Combination estimates Σ Coef·coefficient. A function that is not a function of
-// the fitted values has no estimate: the error wraps ErrNotEstimable and
-// names the column at fault.
+// Combination estimates Σ Coef·coefficient, the coefficients as the fit shows them:
+// beside a constant those of a factor are differences from its reference level. A
+// function that is not a function of the fitted values has no estimate: the error
+// wraps ErrNotEstimable and names the column at fault.
 func (f *Fit) Combination(ws ...Weight) (Estimate, error) {
 	list, err := f.weights(ws)
 	if err != nil {
@@ -432,6 +433,9 @@ func (f *Fit) weights(ws []Weight) ([]weight, error) {
 			return nil, &CoefficientError{Name: w.Name, Err: fmt.Errorf("%w: weight %g", lrt.ErrInvalid, w.Coef)}
 		}
 		list[i] = weight{t, c, dd.From(w.Coef)}
+	}
+	if list = f.Model.asDisplayed(list); nothing(list) {
+		return nil, &CoefficientError{Name: ws[0].Name, Err: fmt.Errorf("%w: it is 0 by the choice of the reference level", ErrNotEstimable)}
 	}
 	return list, nil
 }

@@ -361,9 +361,10 @@ func equationText(e lrt.Equation) string {
 }
 
 // Restrict returns the part of the model on which linear equations between
-// coefficients hold. An equation must be about fitted values, so that levels of a
-// factor beside a constant are restricted by their differences; the fit says
-// ErrNotEstimable otherwise. Bounds and maps are not linear spaces: they are refused
+// coefficients hold, the coefficients as a fit shows them: beside a constant that
+// comes before it a factor's are differences from its reference level (in models
+// with products of factors state differences of levels or cells). An equation must
+// be about fitted values; the fit says ErrNotEstimable otherwise. Bounds and maps are not linear spaces: they are refused
 // with an error wrapping lrt.ErrNotRestrictable.
 func (m *Model) Restrict(rs ...lrt.Restriction) (lrt.Space, error) {
 	w := *m
