@@ -3,6 +3,7 @@ package lrt
 import (
 	"errors"
 	"math"
+	"os"
 	"strings"
 	"testing"
 
@@ -115,7 +116,11 @@ func TestLognormalSamples(t *testing.T) {
 func TestPositiveSamples(t *testing.T) {
 	for name, declare := range map[string]func(Samples) (*Declared, error){"gamma": GammaSamples, "Weibull": WeibullSamples} {
 		t.Run(name, func(t *testing.T) {
-			for trial := range 40 {
+			trials := 40
+			if os.Getenv("SUBSUME_LONG") == "1" {
+				trials = 1000
+			}
+			for trial := range trials {
 				n := 3
 				if trial%2 == 1 {
 					n = 12
