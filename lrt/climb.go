@@ -184,8 +184,10 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		reach = 0.5
 	}
 
-	takeInfo := func() bool {
-		if infos++; infos > 12 || !p.information(s.u, s.f, info, false) {
+	// The climb itself takes the curvature a dozen times; where it wants to end there are
+	// some left, for one from far off can be so large that any gradient looks like none.
+	takeInfo := func(most int) bool {
+		if infos++; infos > most || !p.information(s.u, s.f, info, false) {
 			return false
 		}
 		copy(uInfo, s.u)
@@ -205,7 +207,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 	}
 	switch {
 	case p.gradient:
-		if !takeInfo() {
+		if !takeInfo(12) {
 			haveInfo = false
 		}
 	case p.outer(r.curv):
@@ -237,7 +239,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 				}
 				continue
 			}
-			if takeInfo() {
+			if takeInfo(48) {
 				if r.definite() {
 					length, _ := r.solve(s.g, inf)
 					radius = math.Max(radius, length)
@@ -307,7 +309,7 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 				p.coarse = stalls == 2
 				p.value(s.u)
 				p.settle(s.f)
-				if !p.slope(s.u, s.f, r.curv, s.g) || !takeInfo() {
+				if !p.slope(s.u, s.f, r.curv, s.g) || !takeInfo(12) {
 					break
 				}
 				radius = 1
@@ -334,13 +336,13 @@ func (p *problem) climb(u0 []float64, edges bool) summit {
 		s.f = f
 		switch {
 		case newton:
-			if !takeInfo() {
+			if !takeInfo(12) {
 				newton = false
 			}
 		case !haveInfo && gain > 1 && p.outer(r.curv):
 			p.regroup()
 		case damp > 0 && haveInfo && !r.definite():
-			if !takeInfo() {
+			if !takeInfo(12) {
 				r.diagonal()
 			}
 		default:

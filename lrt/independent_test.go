@@ -551,3 +551,33 @@ func TestLikelihoodOfCancellingTerms(t *testing.T) {
 		}
 	}
 }
+
+// Two groups whose own shapes are 3 and some thousands start with a shape between, where
+// the log likelihood is −1e38 and its curvature as large: what is taken there must
+// not make the end of the search look level.
+func TestNumericalWeibullFromFar(t *testing.T) {
+	failed, all := 0, 0
+	independently(t, func(t *testing.T, seed uint64, _ float64, _ bool) []route {
+		all++
+		if seed <= 3 {
+			seed = []uint64{228, 816, 954}[seed-1]
+		}
+		s := gammaGroups(6, 2, 1e8, seed).samples(false)
+		for i, v := range s[1] {
+			s[1][i] = 1e8 + 0.01*(v-1e8)
+		}
+		d, err := WeibullSamples(s)
+		full := mustSpace(t, d, err)
+		bare := *full.core
+		bare.closedAt = nil
+		fit, err := mustRestrict(t, &Declared{core: &bare, frame: full.frame}, Equate("shape[1]", "shape[2]")).Maximize(bg)
+		if err != nil { // an error says so; a wrong maximum does not
+			failed++
+			return nil
+		}
+		return []route{{"one shape", fit.LogLikelihood, weibullBest(s), 0}}
+	})
+	if t.Logf("%d of %d refused", failed, all); failed > 2+all/30 {
+		t.Errorf("%d searches failed", failed)
+	}
+}
