@@ -1,9 +1,12 @@
 package dist_test
 
 import (
+	"errors"
+	"math"
 	"strings"
 	"testing"
 
+	"subsume.example/dist"
 	"subsume.example/internal/accuracy"
 )
 
@@ -56,5 +59,29 @@ func TestNoncentralityReference(t *testing.T) {
 	}
 	if s := accuracy.Summarize(rs); s.N < 100 || !(s.Max <= 2e-15) {
 		t.Errorf("%d rows, max %.2g: %v", s.N, s.Max, s.Worst)
+	}
+}
+
+// TestNoncentralityRange: beyond the range that the kernels stand the parameter is
+// refused and every value is NaN; at its end tails are probabilities.
+func TestNoncentralityRange(t *testing.T) {
+	for _, law := range []fullLaw{
+		dist.NoncentralF{D1: 3, D2: 20, Lambda: 1e154},
+		dist.NoncentralChiSquared{K: 3, Lambda: 1e300},
+		dist.NoncentralT{Nu: 20, Delta: 1e100},
+	} {
+		var pe *dist.ParamError
+		if err := law.Validate(); !errors.As(err, &pe) || !math.IsNaN(law.Survival(1)) {
+			t.Errorf("%v: %v, Survival(1) = %g", law, err, law.Survival(1))
+		}
+	}
+	for _, law := range []fullLaw{
+		dist.NoncentralF{D1: 3, D2: 20, Lambda: 1e100},
+		dist.NoncentralChiSquared{K: 3, Lambda: 1e100},
+		dist.NoncentralT{Nu: 20, Delta: 1e50},
+	} {
+		if p := law.Survival(1); p != 1 || law.Validate() != nil {
+			t.Errorf("%v: Survival(1) = %g", law, p)
+		}
 	}
 }

@@ -22,23 +22,29 @@ type NoncentralChiSquared struct{ K, Lambda float64 }
 
 var _ Law = NoncentralChiSquared{}
 
-const wantNoncentrality = "a finite number at or above 0"
+const wantNoncentrality = "a number from 0 to 1e100"
 
-// finiteNonnegative reports 0 <= v < Inf; NaN is not.
-func finiteNonnegative(v float64) bool { return v >= 0 && v <= math.MaxFloat64 }
+// The noncentralities up to which the squares that the kernels form stay in range.
+const (
+	maxNoncentrality = 1e100
+	maxDelta         = 1e50
+)
 
-// Validate returns a *ParamError unless 0 < K < +Inf and 0 <= Lambda < +Inf.
+// noncentrality reports whether v is a noncentrality parameter; NaN is not.
+func noncentrality(v float64) bool { return v >= 0 && v <= maxNoncentrality }
+
+// Validate returns a *ParamError unless 0 < K < +Inf and 0 <= Lambda <= 1e100.
 func (c NoncentralChiSquared) Validate() error {
 	if !finitePositive(c.K) {
 		return &ParamError{"NoncentralChiSquared", "K", c.K, wantPositive}
 	}
-	if !finiteNonnegative(c.Lambda) {
+	if !noncentrality(c.Lambda) {
 		return &ParamError{"NoncentralChiSquared", "Lambda", c.Lambda, wantNoncentrality}
 	}
 	return nil
 }
 
-func (c NoncentralChiSquared) valid() bool { return finitePositive(c.K) && finiteNonnegative(c.Lambda) }
+func (c NoncentralChiSquared) valid() bool { return finitePositive(c.K) && noncentrality(c.Lambda) }
 
 func (c NoncentralChiSquared) central() ChiSquared { return ChiSquared{c.K} }
 

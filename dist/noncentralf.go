@@ -23,7 +23,7 @@ type NoncentralF struct{ D1, D2, Lambda float64 }
 
 var _ Law = NoncentralF{}
 
-// Validate returns a *ParamError unless 0 < D1 < +Inf, 0 < D2 <= +Inf and 0 <= Lambda < +Inf.
+// Validate returns a *ParamError unless 0 < D1 < +Inf, 0 < D2 <= +Inf and 0 <= Lambda <= 1e100.
 func (f NoncentralF) Validate() error {
 	if !finitePositive(f.D1) {
 		return &ParamError{"NoncentralF", "D1", f.D1, wantPositive}
@@ -31,14 +31,14 @@ func (f NoncentralF) Validate() error {
 	if !(f.D2 > 0) {
 		return &ParamError{"NoncentralF", "D2", f.D2, wantPositiveOrInf}
 	}
-	if !finiteNonnegative(f.Lambda) {
+	if !noncentrality(f.Lambda) {
 		return &ParamError{"NoncentralF", "Lambda", f.Lambda, wantNoncentrality}
 	}
 	return nil
 }
 
 func (f NoncentralF) valid() bool {
-	return finitePositive(f.D1) && f.D2 > 0 && finiteNonnegative(f.Lambda)
+	return finitePositive(f.D1) && f.D2 > 0 && noncentrality(f.Lambda)
 }
 
 // unlimited reports denominator degrees of freedom at which the law is its limit to

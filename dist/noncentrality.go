@@ -138,7 +138,7 @@ func NoncentralityT(nu, t, survival float64) (float64, error) {
 }
 
 func checkFinder(name string, x, survival float64) error {
-	if !finiteNonnegative(x) {
+	if !(x >= 0 && x <= math.MaxFloat64) {
 		return &ParamError{name, "x", x, "a finite number at or above 0"}
 	}
 	if !(survival >= 0 && survival < 1) {

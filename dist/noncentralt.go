@@ -21,18 +21,18 @@ type NoncentralT struct{ Nu, Delta float64 }
 
 var _ Law = NoncentralT{}
 
-// Validate returns a *ParamError unless 0 < Nu <= +Inf and Delta is finite.
+// Validate returns a *ParamError unless 0 < Nu <= +Inf and |Delta| <= 1e50.
 func (n NoncentralT) Validate() error {
 	if !(n.Nu > 0) {
 		return &ParamError{"NoncentralT", "Nu", n.Nu, wantPositiveOrInf}
 	}
-	if !(math.Abs(n.Delta) <= math.MaxFloat64) {
-		return &ParamError{"NoncentralT", "Delta", n.Delta, "a finite number"}
+	if !(math.Abs(n.Delta) <= maxDelta) {
+		return &ParamError{"NoncentralT", "Delta", n.Delta, "a number within ±1e50"}
 	}
 	return nil
 }
 
-func (n NoncentralT) valid() bool { return n.Nu > 0 && math.Abs(n.Delta) <= math.MaxFloat64 }
+func (n NoncentralT) valid() bool { return n.Nu > 0 && math.Abs(n.Delta) <= maxDelta }
 
 func (n NoncentralT) central() StudentT { return StudentT{n.Nu} }
 
