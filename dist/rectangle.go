@@ -96,6 +96,9 @@ type RectangleProbability struct {
 // Errors: *ParamError for limits or Nu, *MatrixError for the correlations,
 // ErrTolerance when the error estimate stayed above the target (with a valid
 // result), and the context's own error.
+//
+// Known fault: with a finite limit beyond about 1e150 and large Nu the result can be
+// 0 both inside and outside; give such a limit as ±Inf.
 func (r Rectangle) Probability(ctx context.Context, s *RectangleSettings) (RectangleProbability, error) {
 	if err := r.Validate(); err != nil {
 		return RectangleProbability{}, err
